@@ -1,0 +1,1 @@
+"""What a person writes in the settings file, checked before anything runs."""

@@ -1,0 +1,1 @@
+"""What is kept: readings, posteriors, shifts, deliveries."""
