@@ -1,0 +1,52 @@
+"""The model's parameters, all in one frozen value."""
+
+import math
+from dataclasses import dataclass, field
+
+from detectors.errors import UnusableParameter
+from detectors.gap_prior import GapPrior
+from detectors.jump_prior import IndependentLevels, JumpPrior
+
+MODEL_VERSION = 1
+"""Raised whenever the same readings and settings would give other posteriors."""
+
+DISPERSIONS = (0.5, 1.0, 2.0, 4.0, 8.0, 16.0, 32.0, 64.0, 128.0, 256.0, 512.0, 1024.0, math.inf)
+WANDERS = ((0.005, 1.0), (0.01, 1.0), (0.02, 0.5), (0.04, 0.25), (0.08, 0.125), (0.16, 0.0625), (0.32, 0.03125))
+
+
+@dataclass(frozen=True, slots=True)
+class Model:
+    """What the filter assumes of a stream.
+
+    Attributes
+    ----------
+    gap : GapPrior
+        Prior of the length of a run.
+    one_off_share : float
+        Prior probability that a count is a one-off, at least 0 and below 1.
+    one_off_tail : float
+        Tail exponent of the one-off component, above 0.
+    jump : JumpPrior or IndependentLevels
+        How the level of a new run depends on the level before it.
+    dispersions : tuple of float
+        Values considered for the dispersion, each equally likely beforehand; infinity is the Poisson limit.
+    wanders : tuple of (float, float)
+        Values considered for the wander per unit of position, each with its prior weight.
+    """
+
+    gap: GapPrior = field(default_factory=lambda: GapPrior(shape=2, mean=150.0))
+    one_off_share: float = 0.02
+    one_off_tail: float = 1.0
+    jump: JumpPrior | IndependentLevels = field(default_factory=JumpPrior)
+    dispersions: tuple[float, ...] = DISPERSIONS
+    wanders: tuple[tuple[float, float], ...] = WANDERS
+
+    def __post_init__(self) -> None:
+        if not 0.0 <= self.one_off_share < 1.0:
+            raise UnusableParameter("one_off_share", self.one_off_share, "at least 0 and below 1")
+        if not 0.0 < self.one_off_tail < math.inf:
+            raise UnusableParameter("one_off_tail", self.one_off_tail, "a finite number above 0")
+        if not self.dispersions or any(not r > 0.0 for r in self.dispersions):
+            raise UnusableParameter("dispersions", self.dispersions, "one or more numbers above 0")
+        if not self.wanders or any(not (0.0 <= w <= 1.0 and weight > 0.0) for w, weight in self.wanders):
+            raise UnusableParameter("wanders", self.wanders, "one or more (value from 0 to 1, weight above 0)")
