@@ -2,7 +2,9 @@
 
 import math
 from dataclasses import dataclass, field
+from typing import Literal
 
+from detectors.accuracy import Accuracy
 from detectors.errors import UnusableParameter
 from detectors.gap_prior import GapPrior
 from detectors.jump_prior import IndependentLevels, JumpPrior
@@ -32,6 +34,10 @@ class Model:
         Values considered for the dispersion, each equally likely beforehand; infinity is the Poisson limit.
     wanders : tuple of (float, float)
         Values considered for the wander per unit of position, each with its prior weight.
+    first_run : {"equilibrium", "ordinary"}
+        Whether the first run was joined at a random moment of its life, or began with the first count.
+    accuracy : Accuracy
+        The numerical choices.
     """
 
     gap: GapPrior = field(default_factory=lambda: GapPrior(shape=2, mean=150.0))
@@ -40,6 +46,8 @@ class Model:
     jump: JumpPrior | IndependentLevels = field(default_factory=JumpPrior)
     dispersions: tuple[float, ...] = DISPERSIONS
     wanders: tuple[tuple[float, float], ...] = WANDERS
+    first_run: Literal["equilibrium", "ordinary"] = "equilibrium"
+    accuracy: Accuracy = field(default_factory=Accuracy)
 
     def __post_init__(self) -> None:
         if not 0.0 <= self.one_off_share < 1.0:

@@ -1,0 +1,112 @@
+"""What the filter prepares once for a set of grids and uses at every count."""
+
+import copy
+from collections import OrderedDict
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+import numpy as np
+import scipy.sparse as sparse
+from numpy.typing import NDArray
+
+from detectors.counts import effective_dispersion, log_negative_binomial, log_one_off
+from detectors.jump_step import jump_step
+from detectors.level_grid import LevelGrid
+from detectors.model import Model
+from detectors.observation import Observation
+from detectors.wander_kernel import walk_matrix
+
+FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.int64]
+
+MOST_WALKS = 8
+
+
+@dataclass(frozen=True)
+class Walk:
+    """The random walk over one gap, with the row of each stored weight."""
+
+    matrix: "sparse.csr_array"
+    row: IntArray
+
+    def scaled(self, factor: FloatArray, dtype: "np.dtype[np.floating]") -> "sparse.csr_array":
+        """The walk followed by a multiplication of each row."""
+        result = copy.copy(self.matrix)
+        result.data = (self.matrix.data * factor[self.row]).astype(dtype, copy=False)
+        return result
+
+
+@dataclass(frozen=True)
+class Likelihood:
+    """Probability of one count at each node.
+
+    Attributes
+    ----------
+    probability : ndarray, shape (rows,)
+        Probability divided by exp(`log_scale`).
+    one_off_share : ndarray, shape (rows,)
+        Share of it that the one-off component has.
+    negative_binomial : ndarray, shape (rows,)
+        Probability under the negative binomial component alone, not divided.
+    log_scale : float
+        Largest log probability over the rows.
+    """
+
+    probability: FloatArray
+    one_off_share: FloatArray
+    negative_binomial: FloatArray
+    log_scale: float
+
+
+@dataclass(frozen=True)
+class Bench:
+    """Matrices and tables for one set of grids; shared by all states that stand on them."""
+
+    model: Model
+    dispersion: FloatArray
+    wander: FloatArray
+    grid: LevelGrid
+    level: FloatArray
+    row_dispersion: FloatArray
+    jump: Callable[[FloatArray], FloatArray]
+    _walks: "OrderedDict[int, Walk]" = field(default_factory=OrderedDict)
+
+    def walk(self, gap: int) -> Walk:
+        """The random walk over a gap; the last few are kept."""
+        known = self._walks.get(gap)
+        if known is None:
+            matrix = walk_matrix(self.grid, self.wander * np.sqrt(float(gap)))
+            known = Walk(matrix, np.repeat(np.arange(self.grid.rows), np.diff(matrix.indptr)))
+            self._walks[gap] = known
+            while len(self._walks) > MOST_WALKS:
+                self._walks.popitem(last=False)
+        return known
+
+    def likelihood(self, observation: Observation) -> Likelihood:
+        """Probability of a count at each node (missing counts have none)."""
+        count = observation.count if observation.count is not None else 0
+        mean = self.level * observation.exposure
+        dispersion = effective_dispersion(self.row_dispersion, observation.relative_sd)
+        log_nb = log_negative_binomial(count, mean, dispersion)
+        negative_binomial = np.exp(log_nb)
+        share = self.model.one_off_share
+        if share == 0.0:
+            scale = float(log_nb.max())
+            return Likelihood(np.exp(log_nb - scale), np.zeros_like(mean), negative_binomial, scale)
+        one_off = share * np.exp(log_one_off(count, mean, self.model.one_off_tail))
+        total = (1.0 - share) * negative_binomial + one_off
+        largest = float(total.max())
+        return Likelihood(total / largest, one_off / total, negative_binomial, float(np.log(largest)))
+
+
+def bench_for(model: Model, dispersion: FloatArray, wander: FloatArray, grid: LevelGrid) -> Bench:
+    """Prepare the matrices and tables of a set of grids."""
+    return Bench(
+        model=model,
+        dispersion=dispersion,
+        wander=wander,
+        grid=grid,
+        level=np.exp(grid.log_level),
+        row_dispersion=dispersion[grid.pair],
+        jump=jump_step(model.jump, grid),
+    )

@@ -1,0 +1,83 @@
+"""What the filter knows after a count, and what one count did."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detectors.bench import Bench, Likelihood
+from detectors.level_grid import LevelGrid
+from detectors.observation import Observation
+from detectors.run_slots import RunSlots
+
+FloatArray = NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class FilterState:
+    """All that the filter knows after a count. A step returns a new state and changes none.
+
+    Attributes
+    ----------
+    bench : Bench
+        The model, the pairs of dispersion and wander still considered, and their grids.
+    counted : int
+        Number of counts folded.
+    position : int
+        Position of the last count.
+    log_weight : ndarray, shape (pairs,)
+        Log posterior probability of each pair.
+    weights : ndarray, shape (rows, slots)
+        Weight of each node and run, to be multiplied by `run_factor`.
+    run_factor : ndarray, shape (slots,)
+        Factor of each run's column: survival not yet multiplied in.
+    pair_total : ndarray, shape (pairs,)
+        Total of each pair's weights.
+    slots : RunSlots
+        The runs.
+    reference : float
+        Upper quantile of the log level, for the spacing.
+    early : tuple of Observation
+        The counts so far, as long as there are few.
+    """
+
+    bench: Bench
+    counted: int
+    position: int
+    log_weight: FloatArray
+    weights: FloatArray
+    run_factor: FloatArray
+    pair_total: FloatArray
+    slots: RunSlots
+    reference: float
+    early: tuple[Observation, ...]
+
+    @property
+    def grid(self) -> LevelGrid:
+        """The level grids."""
+        return self.bench.grid
+
+
+@dataclass(frozen=True)
+class Step:
+    """What one count did, before it is summarised.
+
+    Attributes
+    ----------
+    log_predictive : float
+        Log probability of the count given those before it.
+    likelihood : Likelihood
+        Its probability at each node.
+    row_mass : ndarray, shape (rows,)
+        Posterior probability of each node, pairs weighted.
+    run_mass : ndarray, shape (slots,)
+        Posterior probability of each slot.
+    slots : RunSlots
+        The runs that the slots held, before old ones were merged.
+    """
+
+    log_predictive: float
+    likelihood: Likelihood
+    row_mass: FloatArray
+    run_mass: FloatArray
+    slots: RunSlots

@@ -1,0 +1,340 @@
+"""The prior of the length of a run, and the hazard that follows from it.
+
+A run ends with the `shape`-th success of independent trials, one trial per unit of position. A run of a
+known age that goes on is a mixture of "still needs 1, 2, ..., `shape` successes", and the chance that it
+ends within a gap is the same mixture of binomial tails. Every term is positive, so nothing cancels however
+old the run or long the gap.
+"""
+
+import math
+from dataclasses import dataclass
+from functools import lru_cache
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from detectors.errors import UnusableParameter
+
+FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.int64]
+
+_SMALLEST_TABLE = 1024
+_LARGEST_TABLE = 1 << 19
+
+
+@dataclass(frozen=True, slots=True)
+class GapPrior:
+    """Negative-binomial prior of the length G of a run, counted in trials.
+
+    P(G = t) = C(t-1, k-1) p^k (1-p)^(t-k) for t = k, k+1, ..., with k = `shape` and p = `shape` / `mean`.
+    Shape 1 is the constant hazard; from 2 on a shift right after a shift is unlikely.
+
+    The first run of a stream began before anyone watched, so what is left of it has the equilibrium
+    distribution, P(R > a) = sum_{g >= a} S(g) / sum_{g >= 0} S(g) with S(g) = P(G > g). The methods whose
+    name begins with `first` are about that run.
+
+    Attributes
+    ----------
+    shape : int
+        Number of successes k that ends a run, at least 1.
+    mean : float
+        Mean length of a run in units of position, finite and at least `shape`.
+
+    Raises
+    ------
+    UnusableParameter
+        If `shape` or `mean` is outside its range.
+
+    References
+    ----------
+    Fearnhead (2006), Exact and efficient Bayesian inference for multiple changepoint problems, Statistics
+    and Computing 16, 203-213. Fearnhead & Liu (2007), On-line inference for multiple changepoint problems,
+    JRSS B 69, 589-605.
+
+    Examples
+    --------
+    >>> GapPrior(shape=2, mean=20.0).hazard([1, 2, 10]).round(6).tolist()
+    [0.0, 0.01, 0.05]
+    """
+
+    shape: int
+    mean: float
+
+    def __post_init__(self) -> None:
+        if isinstance(self.shape, bool) or not isinstance(self.shape, int) or self.shape < 1:
+            raise UnusableParameter("shape", self.shape, "a whole number of at least 1")
+        if not self.shape <= self.mean < math.inf:
+            raise UnusableParameter("mean", self.mean, f"a finite number of at least the shape, {self.shape}")
+
+    @property
+    def p(self) -> float:
+        """Chance of a success at one trial, `shape` / `mean`: what the hazard of an old run tends to."""
+        return self.shape / self.mean
+
+    def hazard(self, t: ArrayLike) -> FloatArray:
+        """Hazard of an ordinary run, h(t) = P(G = t | G >= t).
+
+        Parameters
+        ----------
+        t : array_like of int
+            Lengths, at least 1, any shape.
+
+        Returns
+        -------
+        ndarray
+            Probabilities, same shape; 0 below `shape`.
+
+        Examples
+        --------
+        >>> GapPrior(shape=1, mean=50.0).hazard([1, 1000]).tolist()
+        [0.02, 0.02]
+        """
+        return self.shift_within(np.asarray(t, dtype=np.int64) - 1, 1)
+
+    def first_hazard(self, t: ArrayLike) -> FloatArray:
+        """Hazard of the first run, h0(t) = p S_k(t-1) / sum_{i <= k} S_i(t-1).
+
+        S_i is the survival of the i-th success.
+
+        Parameters
+        ----------
+        t : array_like of int
+            Lengths since the stream was first watched, at least 1, any shape.
+
+        Returns
+        -------
+        ndarray
+            Probabilities, same shape.
+
+        Examples
+        --------
+        >>> GapPrior(shape=2, mean=20.0).first_hazard([1, 3]).round(6).tolist()
+        [0.05, 0.055]
+        """
+        return self.first_shift_within(np.asarray(t, dtype=np.int64) - 1, 1)
+
+    def shift_within(self, age: ArrayLike, gap: int) -> FloatArray:
+        """Chance H(a, d) = 1 - S(a + d) / S(a) that an ordinary run ends within the next gap.
+
+        Parameters
+        ----------
+        age : array_like of int
+            Ages a of runs in units of position, at least 0, any shape: position now less position of the
+            run's first observation.
+        gap : int
+            Gap d to the next observation, at least 1.
+
+        Returns
+        -------
+        ndarray
+            Probabilities, same shape as `age`.
+
+        Raises
+        ------
+        UnusableParameter
+            If an age is negative or the gap is below 1.
+
+        Examples
+        --------
+        >>> GapPrior(shape=2, mean=50.0).shift_within([0, 10], 7).round(6).tolist()
+        [0.02938, 0.093843]
+        """
+        ages = np.asarray(age, dtype=np.int64)
+        still_needed: FloatArray = _rows_at(self, ages, 0) @ _done_within(self, gap)
+        return still_needed
+
+    def first_shift_within(self, age: ArrayLike, gap: int) -> FloatArray:
+        """Chance that the first run ends within the next gap.
+
+        Parameters
+        ----------
+        age : array_like of int
+            Units of position since the stream's first observation, at least 0, any shape.
+        gap : int
+            Gap to the next observation, at least 1.
+
+        Returns
+        -------
+        ndarray
+            Probabilities, same shape as `age`.
+
+        Raises
+        ------
+        UnusableParameter
+            If an age is negative or the gap is below 1.
+
+        Examples
+        --------
+        >>> GapPrior(shape=2, mean=20.0).first_shift_within([0], 1).tolist()
+        [0.05]
+        """
+        ages = np.asarray(age, dtype=np.int64)
+        ends: FloatArray = _rows_at(self, ages, 1) @ _done_within(self, gap)
+        return ends
+
+    def log_survival(self, t: ArrayLike) -> FloatArray:
+        """Logarithm of S(t) = P(G > t) for an ordinary run.
+
+        Parameters
+        ----------
+        t : array_like of int
+            Lengths, at least 0, any shape.
+
+        Returns
+        -------
+        ndarray
+            Natural logarithms, same shape; 0 below `shape`, minus infinity where no run can be that long.
+
+        Examples
+        --------
+        >>> GapPrior(shape=1, mean=50.0).log_survival([0, 100]).round(6).tolist()
+        [0.0, -2.020271]
+        """
+        lengths = np.asarray(t, dtype=np.int64)
+        if self.p == 1.0:
+            return np.where(lengths < self.shape, 0.0, -math.inf)
+        log_terms = _log_successes(self, lengths)
+        ended = np.exp(log_terms[..., self.shape :]).sum(axis=-1)
+        near = 0.0 + np.log1p(-np.minimum(ended, 0.5))
+        return np.where(ended < 0.5, near, _log_sum(log_terms[..., : self.shape]))
+
+    def mean_residual(self, age: ArrayLike) -> FloatArray:
+        """Mean of what is left of an ordinary run, E[G - a | G > a].
+
+        Parameters
+        ----------
+        age : array_like of int
+            Ages a of runs in units of position, at least 0, any shape.
+
+        Returns
+        -------
+        ndarray
+            Units of position, same shape; `mean` at age 0.
+
+        Examples
+        --------
+        >>> GapPrior(shape=2, mean=20.0).mean_residual([0, 1000]).round(1).tolist()
+        [20.0, 10.1]
+        """
+        needed: FloatArray = _rows_at(self, np.asarray(age, dtype=np.int64), 0) @ _needed(self)
+        return needed
+
+    def first_mean_residual(self, age: ArrayLike) -> FloatArray:
+        """Mean of what is left of the first run, E[R - a | R > a].
+
+        Parameters
+        ----------
+        age : array_like of int
+            Units of position since the stream's first observation, at least 0, any shape.
+
+        Returns
+        -------
+        ndarray
+            Units of position, same shape; (E[G^2] + E[G]) / (2 E[G]) at age 0.
+
+        Examples
+        --------
+        >>> GapPrior(shape=2, mean=20.0).first_mean_residual([0]).tolist()
+        [15.0]
+        """
+        needed: FloatArray = _rows_at(self, np.asarray(age, dtype=np.int64), 1) @ _needed(self)
+        return needed
+
+
+def _needed(prior: GapPrior) -> FloatArray:
+    """Mean trials until the successes still needed, for 1 .. shape of them."""
+    return np.arange(1, prior.shape + 1) / prior.p
+
+
+@lru_cache(maxsize=256)
+def _done_within(prior: GapPrior, gap: int) -> FloatArray:
+    """Chance that a run which still needs 1 .. shape successes has them within the gap, shape (shape,)."""
+    if gap < 1:
+        raise UnusableParameter("gap", gap, "a whole number of at least 1")
+    if prior.p == 1.0:
+        done = np.where(np.arange(1, prior.shape + 1) <= gap, 1.0, 0.0)
+    else:
+        terms = np.exp(_log_successes(prior, np.asarray(gap)))
+        fewer = np.cumsum(terms)[: prior.shape]
+        at_least = np.cumsum(terms[::-1])[::-1][1 : prior.shape + 1]
+        done = np.where(fewer < 0.5, 1.0 - fewer, at_least)
+    done.flags.writeable = False
+    return done
+
+
+def _log_successes(prior: GapPrior, trials: IntArray) -> FloatArray:
+    """log P(i successes in so many trials), i = 0, 1, ... on the last axis, for p below 1.
+
+    It goes so far beyond `shape` that what follows adds nothing to the tail beyond `shape` or less, unless
+    that tail is more than half: the terms fall like exp(-j^2 / (2 (shape + j))) and faster.
+    """
+    had = np.arange(prior.shape + math.ceil(12.0 * math.sqrt(prior.shape)) + 40)
+    left = np.maximum(trials[..., None] - had, 0)
+    ratio = left / (had + 1.0) * (prior.p / (1.0 - prior.p))
+    with np.errstate(divide="ignore"):
+        log_ratio = np.log(ratio)
+    log_terms = np.zeros((*trials.shape, had.size + 1))
+    np.cumsum(log_ratio, axis=-1, out=log_terms[..., 1:])
+    log_terms += trials[..., None] * math.log1p(-prior.p)
+    return log_terms
+
+
+def _log_sum(log_terms: FloatArray) -> FloatArray:
+    largest = log_terms.max(axis=-1)
+    summed: FloatArray = np.log(np.exp(log_terms - largest[..., None]).sum(axis=-1)) + largest
+    return summed
+
+
+def _rows_at(prior: GapPrior, ages: IntArray, kind: int) -> FloatArray:
+    """Distribution of the successes still needed at each age, shape (..., shape); kind 1 is the first run."""
+    if ages.size == 0:
+        return np.empty((*ages.shape, prior.shape))
+    oldest = int(ages.max())
+    if ages.min() < 0:
+        raise UnusableParameter("age", int(ages.min()), "at least 0")
+    size = max(_SMALLEST_TABLE, 1 << oldest.bit_length())
+    if size * prior.shape > _LARGEST_TABLE:
+        return _still_needed(prior, ages)[kind]
+    rows: FloatArray = _table(prior, size)[kind].take(ages, axis=0)
+    return rows
+
+
+@lru_cache(maxsize=16)
+def _table(prior: GapPrior, size: int) -> tuple[FloatArray, FloatArray]:
+    """Distributions of the successes still needed at the ages 0 .. size - 1, for reading only."""
+    tables = _still_needed(prior, np.arange(size))
+    for table in tables:
+        table.flags.writeable = False
+    return tables
+
+
+def _still_needed(prior: GapPrior, ages: IntArray) -> tuple[FloatArray, FloatArray]:
+    """Distribution of the successes still needed, given that the run goes on, ordinary and first run.
+
+    Column m - 1 stands for m successes. An ordinary run of age a has had i = shape - m successes with a
+    probability in proportion to C(a, i) (p / q)^i, and the first run, which needed 1 .. shape of them with
+    equal probability when it was first watched, in proportion to the sum of those up to i.
+    """
+    by_had = _binomial_weights(prior, ages)
+    first = np.cumsum(by_had, axis=-1)
+    return _normalised(by_had[..., ::-1]), _normalised(first[..., ::-1])
+
+
+def _normalised(weights: FloatArray) -> FloatArray:
+    shares: FloatArray = weights / weights.sum(axis=-1, keepdims=True)
+    return np.ascontiguousarray(shares)
+
+
+def _binomial_weights(prior: GapPrior, ages: IntArray) -> FloatArray:
+    """C(a, i) (p / q)^i for i = 0 .. shape - 1, divided by the largest of them, shape (..., shape).
+
+    Products of neighbours' ratios run from the largest term outwards, so none can overflow.
+    """
+    weights = np.ones((*ages.shape, prior.shape))
+    had = np.arange(prior.shape - 1)
+    odds = prior.p / max(1.0 - prior.p, 1e-300)
+    ratio = np.maximum(ages[..., None] - had, 0) / (had + 1.0) * odds
+    weights[..., 1:] = np.cumprod(np.minimum(ratio, 1.0), axis=-1)
+    rising = 1.0 / np.maximum(ratio, 1.0)
+    weights[..., :-1] *= np.cumprod(rising[..., ::-1], axis=-1)[..., ::-1]
+    return weights

@@ -1,0 +1,92 @@
+"""What a shift does to the level: the jump prior applied to all pairs' grids at once."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from functools import lru_cache
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detectors.jump_prior import IndependentLevels, JumpPrior
+from detectors.level_grid import LevelGrid
+
+FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.int64]
+
+FARTHEST_JUMP = 200.0
+"""Jumps of the log level beyond this (a factor of e^200) are left out of the normalising sum."""
+
+
+@dataclass(frozen=True)
+class _Group:
+    """Pairs with one spacing: their rows, padded to one length, and the jump matrix of that length."""
+
+    rows: IntArray
+    filled: NDArray[np.bool_]
+    targets: IntArray
+    matrix: FloatArray
+
+
+def jump_step(jump: JumpPrior | IndependentLevels, grid: LevelGrid) -> Callable[[FloatArray], FloatArray]:
+    """Build the map from the level weights that shift now to the level weights of the new run.
+
+    Parameters
+    ----------
+    jump : JumpPrior or IndependentLevels
+        The prior.
+    grid : LevelGrid
+        The grids.
+
+    Returns
+    -------
+    callable
+        Takes and returns an ndarray of shape (rows,). A jump prior is normalised over all nodes that an
+        endless grid of the same spacing would have: what lands beyond the grid's ends is lost, as it should
+        be, since the grid spans every level at which the newest count is likely.
+    """
+    if isinstance(jump, IndependentLevels):
+        return _independent(jump, grid)
+    groups = [_group(jump, grid, float(h)) for h in np.unique(grid.spacing)]
+    return lambda shifting: _apply(groups, shifting)
+
+
+def _independent(jump: IndependentLevels, grid: LevelGrid) -> Callable[[FloatArray], FloatArray]:
+    density = jump.density(grid.log_level) * grid.spacing[grid.pair]
+    return lambda shifting: np.add.reduceat(shifting, grid.start)[grid.pair] * density
+
+
+@lru_cache(maxsize=256)
+def jump_weights(jump: JumpPrior, spacing: float, size: int) -> FloatArray:
+    """Probability of a jump by 0, 1, ..., size - 1 nodes upwards (or downwards: it is symmetric)."""
+    offsets = np.arange(int(FARTHEST_JUMP / spacing) + 2)
+    density = jump.density(offsets * spacing)
+    weights = (density / (2.0 * density.sum() - density[0]))[:size]
+    weights.flags.writeable = False
+    return weights
+
+
+@lru_cache(maxsize=128)
+def _toeplitz(jump: JumpPrior, spacing: float, size: int) -> FloatArray:
+    weights = jump_weights(jump, spacing, size)
+    matrix = weights[np.abs(np.arange(size)[:, None] - np.arange(size)[None, :])]
+    matrix.flags.writeable = False
+    return matrix
+
+
+def _group(jump: JumpPrior, grid: LevelGrid, spacing: float) -> _Group:
+    members = np.flatnonzero(grid.spacing == spacing)
+    sizes = grid.size[members]
+    longest = int(sizes.max())
+    matrix = _toeplitz(jump, spacing, -(-longest // 32) * 32)[:longest, :longest]
+    places = np.arange(longest)[None, :]
+    filled = places < sizes[:, None]
+    rows = np.where(filled, grid.start[members][:, None] + places, 0)
+    return _Group(rows, filled, rows[filled], matrix)
+
+
+def _apply(groups: list[_Group], shifting: FloatArray) -> FloatArray:
+    landed = np.zeros_like(shifting)
+    for group in groups:
+        leaving = np.where(group.filled, shifting[group.rows], 0.0)
+        landed[group.targets] = (leaving @ group.matrix)[group.filled]
+    return landed

@@ -1,0 +1,62 @@
+"""How finely, and how far, the log level must be divided for one count series."""
+
+import numpy as np
+from numpy.typing import NDArray
+
+FloatArray = NDArray[np.float64]
+IntArray = NDArray[np.int64]
+
+LOWEST_LEVEL = 0.01
+"""Levels below this many counts per unit of exposure are not told apart."""
+LOWEST_LOG_LEVEL = float(np.log(LOWEST_LEVEL))
+LOG_LEVEL_RANGE = 46.0
+"""Length of the range over which the first level is flat on the log scale."""
+
+STILL_PER_SD = 1.8
+WANDERING_PER_SD = 0.8
+MOST_NODES = 4096
+WIDEST_REACH = 8.0
+
+
+def count_variance(log_level: float | FloatArray, dispersion: FloatArray) -> FloatArray:
+    """Variance of the log of one count: 1 / level + 1 / dispersion."""
+    return np.exp(-np.asarray(log_level, dtype=np.float64)) + 1.0 / dispersion
+
+
+def widest_spacing(variance: FloatArray, wander: FloatArray, longest_run: int) -> FloatArray:
+    """Widest spacing of the log level that keeps the trapezoid rule's error negligible.
+
+    Parameters
+    ----------
+    variance : ndarray, shape (pairs,)
+        Variance of the log of one count.
+    wander : ndarray, shape (pairs,)
+        Standard deviation of the level's random walk per unit of position.
+    longest_run : int
+        Longest run, in counts, that still carries weight.
+
+    Returns
+    -------
+    ndarray, shape (pairs,)
+        Spacing, a power of the square root of 2, so that pairs share their grids.
+
+    Notes
+    -----
+    The error falls like exp(-2 pi^2 (sd / h)^2); sd is the posterior standard deviation: sqrt(v / n) for a
+    level that stands still, and the steady state of the random walk seen through noise otherwise.
+    """
+    still = np.sqrt(variance / max(longest_run, 1)) * STILL_PER_SD
+    w2 = wander * wander
+    steady = (np.sqrt(w2 * w2 + 4.0 * w2 * variance) - w2) / 2.0
+    wandering = np.sqrt(steady) * WANDERING_PER_SD
+    return np.where(wander > 0.0, wandering, still)
+
+
+def on_ladder(spacing: FloatArray) -> FloatArray:
+    """The largest power of sqrt(2) that is not above the spacing."""
+    return np.exp2(np.floor(2.0 * np.log2(spacing) + 1e-9) / 2.0)
+
+
+def reach(log_level: float, dispersion: FloatArray, sds: float) -> FloatArray:
+    """Distance in the log level that `sds` standard deviations of one count's log span, bounded."""
+    return np.minimum(sds * np.sqrt(count_variance(log_level, dispersion)), WIDEST_REACH)

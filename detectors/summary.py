@@ -1,0 +1,98 @@
+"""From the filter's weights to the figures that are stored and shown."""
+
+import numpy as np
+from numpy.typing import NDArray
+
+from detectors.filter_state import FilterState, Step
+from detectors.level_grid import LevelGrid
+from detectors.observation import Observation
+from detectors.posterior import Posterior, Quantiles, RunLengths, Weighted
+from detectors.predictive import transform
+
+FloatArray = NDArray[np.float64]
+
+SHARES = np.array([0.05, 0.5, 0.95])
+
+
+def level_quantiles(grid: LevelGrid, row_mass: FloatArray) -> Quantiles:
+    """The 5 %, 50 % and 95 % quantiles of the level from the probability of each node.
+
+    Parameters
+    ----------
+    grid : LevelGrid
+        The grids.
+    row_mass : ndarray, shape (rows,)
+        Weight of each node; it need not sum to 1.
+
+    Returns
+    -------
+    Quantiles
+        In counts per unit of exposure.
+    """
+    mass = row_mass[grid.ascending]
+    running = np.cumsum(mass)
+    middle = (running - 0.5 * mass) / running[-1]
+    low, mid, high = np.exp(np.interp(SHARES, middle, grid.ascending_log_level)).tolist()
+    return Quantiles(low, mid, high)
+
+
+def run_lengths(step: Step, counted: int) -> RunLengths:
+    """The run-length posterior as groups, shortest first."""
+    used = np.flatnonzero(step.slots.used)
+    order = used[np.argsort(-step.slots.newest[used], kind="stable")]
+    mass = step.run_mass[order]
+    return RunLengths(
+        shortest=tuple((counted - step.slots.newest[order] + 1).tolist()),
+        longest=tuple((counted - step.slots.oldest[order] + 1).tolist()),
+        probability=tuple((mass / mass.sum()).tolist()),
+        holds_first_run=True,
+    )
+
+
+def most_probable(lengths: RunLengths) -> int:
+    """The most probable run length; of a group of lengths, the one in its middle."""
+    shortest, longest = np.array(lengths.shortest), np.array(lengths.longest)
+    best = int(np.argmax(np.array(lengths.probability) / (longest - shortest + 1)))
+    return int(shortest[best] + longest[best]) // 2
+
+
+def posterior(state: FilterState, step: Step, observation: Observation, recent_shift: float) -> Posterior:
+    """Everything that is said after a count.
+
+    Parameters
+    ----------
+    state : FilterState
+        The state after the count.
+    step : Step
+        What the count did.
+    observation : Observation
+        The count.
+    recent_shift : float
+        The judge's recent shift probability.
+
+    Returns
+    -------
+    Posterior
+    """
+    bench = state.bench
+    lengths = run_lengths(step, state.counted)
+    weight = np.exp(state.log_weight)
+    return Posterior(
+        position=observation.position,
+        counted=state.counted,
+        run_lengths=lengths,
+        run_length_mode=most_probable(lengths),
+        recent_shift=recent_shift,
+        level=level_quantiles(bench.grid, step.row_mass),
+        dispersion=_marginal(bench.dispersion, weight),
+        wander=_marginal(bench.wander, weight),
+        one_off=float(np.clip(step.row_mass @ step.likelihood.one_off_share, 0.0, 1.0)),
+        log_predictive=step.log_predictive,
+        pit=transform(bench, step, observation),
+    )
+
+
+def _marginal(value: FloatArray, weight: FloatArray) -> Weighted:
+    values, place = np.unique(value, return_inverse=True)
+    probability = np.bincount(place, weights=weight)
+    return Weighted(tuple(values.tolist()), tuple((probability / probability.sum()).tolist()))
