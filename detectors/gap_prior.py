@@ -194,9 +194,10 @@ class GapPrior:
         if self.p == 1.0:
             return np.where(lengths < self.shape, 0.0, -math.inf)
         log_terms = _log_successes(self, lengths)
+        direct = _log_sum(log_terms[..., : self.shape])
         ended = np.exp(log_terms[..., self.shape :]).sum(axis=-1)
-        near = 0.0 + np.log1p(-np.minimum(ended, 0.5))
-        return np.where(ended < 0.5, near, _log_sum(log_terms[..., : self.shape]))
+        near = 0.0 + np.log1p(-np.minimum(ended, 0.75))
+        return np.where(direct > -math.log(2.0), near, direct)
 
     def mean_residual(self, age: ArrayLike) -> FloatArray:
         """Mean of what is left of an ordinary run, E[G - a | G > a].
@@ -258,6 +259,7 @@ def _done_within(prior: GapPrior, gap: int) -> FloatArray:
         fewer = np.cumsum(terms)[: prior.shape]
         at_least = np.cumsum(terms[::-1])[::-1][1 : prior.shape + 1]
         done = np.where(fewer < 0.5, 1.0 - fewer, at_least)
+        done[0] = -math.expm1(gap * math.log1p(-prior.p))
     done.flags.writeable = False
     return done
 
