@@ -1,8 +1,8 @@
 """Probabilities of a count: negative binomial, and the broad one-off component.
 
-The negative binomial is evaluated in saddle-point form (Loader 2000): a term that depends on the count and the
-dispersion only, less a deviance that is the sum of two terms of at least 0. Differences of log gamma functions
-would lose seven digits at counts of a billion.
+The negative binomial is evaluated in saddle-point form (Loader 2000): a term that depends on the count and
+the dispersion only, less a deviance that is the sum of two terms of at least 0. Differences of log gamma
+functions would lose seven digits at counts of a billion.
 """
 
 import math
@@ -136,13 +136,14 @@ def _deviance(x: FloatArray, m_and_r: FloatArray) -> FloatArray:
     m, r = m_and_r
     total = m + r
     excess = np.empty_like(m_and_r)
-    np.multiply(x - m, r / total, out=excess[0])
-    np.negative(excess[0], out=excess[1])
+    np.multiply(x - m, r / total, out=excess[0, ...])
+    np.negative(excess[0], out=excess[1, ...])
     expected = m_and_r * ((r + x) / total)
     found = np.empty_like(m_and_r)
     found[0], found[1] = x, r
     both = _bd0(found, expected, excess)
-    return both[0] + both[1]
+    total_deviance: FloatArray = both[0] + both[1]
+    return total_deviance
 
 
 def _bd0(a: FloatArray, b: FloatArray, a_less_b: FloatArray) -> FloatArray:
@@ -176,11 +177,12 @@ def _stirling_error(n: FloatArray) -> FloatArray:
         series += coefficient
         series *= square
     series = (series + _STIRLING[0]) * inverse
-    if n.min() >= _SERIES_FROM:
+    small = n < _SERIES_FROM
+    if not small.any():
         return series
     few = np.minimum(n, _SERIES_FROM)
     direct = gammaln(few + 1.0) - (few + 0.5) * np.log(few) + few - _HALF_LOG_TWO_PI
-    return np.where(n < _SERIES_FROM, direct, series)
+    return np.where(small, direct, series)
 
 
 def log_one_off(count: ArrayLike, mean: ArrayLike, tail: float) -> FloatArray:

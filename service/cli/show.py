@@ -1,0 +1,132 @@
+"""How results reach a person or a machine: tables, one JSON document, progress on long work."""
+
+import datetime
+import os
+import sys
+from collections.abc import Callable, Iterator, Sequence
+from contextlib import contextmanager
+
+import click
+
+from service.cli.json_form import instant_text, json_text
+from service.cli.sparkline import BLOCKS, PLAIN_BLOCKS
+
+Cell = str | int | float | bool | datetime.date | None
+PLAIN_WIDTH = 100
+NUMBER_DIGITS = 4
+
+
+def show_json(value: object) -> None:
+    """One JSON document on standard output, which pipes get as UTF-8 whatever the locale says."""
+    click.get_binary_stream("stdout").write(json_text(value).encode() + b"\n")
+
+
+def show_table(columns: Sequence[str], rows: Sequence[Sequence[Cell]]) -> None:
+    """A table: with lines and headings on a terminal, plain aligned columns anywhere else."""
+    cells = [[cell_text(cell) for cell in row] for row in rows]
+    right = [bool(rows) and all(_is_number(row[place]) for row in rows) for place in range(len(columns))]
+    if sys.stdout.isatty():
+        _show_rich(columns, cells, right)
+    else:
+        for line in plain_lines(columns, cells, right):
+            say(line)
+
+
+def plain_lines(columns: Sequence[str], cells: Sequence[Sequence[str]], right: Sequence[bool]) -> Iterator[str]:
+    """The lines of a table without any drawing; nothing is cut off, since a program may read it."""
+    every = [list(columns), *cells]
+    widths = [max(len(row[place]) for row in every) for place in range(len(columns))]
+    for row in every:
+        padded = (
+            cell.rjust(width) if to_right else cell.ljust(width)
+            for cell, width, to_right in zip(row, widths, right, strict=True)
+        )
+        yield "  ".join(padded).rstrip()
+
+
+def cell_text(cell: Cell) -> str:
+    """A cell as people read it: nothing as a dash, instants in UTC, figures to four digits."""
+    match cell:
+        case None:
+            return "-"
+        case bool():
+            return "yes" if cell else "no"
+        case float():
+            return number_text(cell)
+        case datetime.datetime():
+            return instant_text(cell.replace(microsecond=0))
+        case datetime.date():
+            return cell.isoformat()
+        case _:
+            return str(cell)
+
+
+def number_text(value: float) -> str:
+    """A figure to four digits, large ones in full and with spaces between thousands."""
+    if abs(value) >= 10 ** (NUMBER_DIGITS - 1):
+        return f"{value:,.0f}".replace(",", " ")
+    return f"{value:.{NUMBER_DIGITS - 1}f}" if abs(value) < 1 else f"{value:.{NUMBER_DIGITS}g}"
+
+
+def say(text: str) -> None:
+    """A line for a person; characters that the terminal cannot print are replaced."""
+    encoding = sys.stdout.encoding or "utf-8"
+    click.echo(text.encode(encoding, "replace").decode(encoding))
+
+
+def note(text: str) -> None:
+    """A line beside the result: on standard error."""
+    click.echo(f"knickpoint: {text}", err=True)
+
+
+def blocks() -> str:
+    """The blocks for a sparkline that standard output can print."""
+    try:
+        BLOCKS.encode(sys.stdout.encoding or "utf-8")
+    except UnicodeEncodeError:
+        return PLAIN_BLOCKS
+    return BLOCKS
+
+
+def width() -> int:
+    """How many characters fit on a line."""
+    try:
+        return os.get_terminal_size(sys.stdout.fileno()).columns
+    except (OSError, ValueError):
+        return PLAIN_WIDTH
+
+
+@contextmanager
+def progress(title: str, total: int) -> Iterator[Callable[[int], None]]:
+    """A bar on standard error while something long goes on; gives the function that moves it on.
+
+    Only on a terminal: in a log it would be noise.
+    """
+    if not sys.stderr.isatty():
+        yield lambda _steps: None
+        return
+    from rich.console import Console
+    from rich.progress import Progress
+
+    with Progress(console=Console(stderr=True), transient=True) as bar:
+        task = bar.add_task(title, total=total)
+        yield lambda steps: bar.advance(task, steps)
+
+
+def _show_rich(columns: Sequence[str], cells: Sequence[Sequence[str]], right: Sequence[bool]) -> None:
+    from rich import box
+    from rich.console import Console
+    from rich.table import Table
+    from rich.text import Text
+
+    table = Table(box=box.SIMPLE_HEAD)
+    for name, to_right in zip(columns, right, strict=True):
+        table.add_column(name, justify="right" if to_right else "left", overflow="fold")
+    for row in cells:
+        # As Text, so that brackets in a title are not taken for markup.
+        table.add_row(*map(Text, row))
+    Console().print(table)
+
+
+def _is_number(cell: Cell) -> bool:
+    return cell is None or (isinstance(cell, int | float) and not isinstance(cell, bool))

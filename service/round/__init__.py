@@ -1,0 +1,1 @@
+"""One pass for one source: read, keep, advance, record."""

@@ -1,0 +1,1 @@
+"""Where counts are read: one document a round, from JSON, CSV or an SQL query."""

@@ -1,0 +1,1 @@
+"""The history of the tables, for Alembic. Run through `storage.migrate`, never by hand."""
