@@ -14,6 +14,8 @@ class Accuracy:
     ----------
     spacing : float
         Factor on the automatic spacing of the level grid; a quarter makes the grid four times finer.
+    reach : float
+        Factor on how far the level grid reaches beyond the counts and the level.
     exact_run_length : int
         Runs up to this length are kept one by one, so a judge's window must not be longer.
     merging : float
@@ -28,6 +30,7 @@ class Accuracy:
     """
 
     spacing: float = 1.0
+    reach: float = 1.0
     exact_run_length: int = 40
     merging: float = 8.0
     drop_below: float = 1e-6
@@ -37,6 +40,8 @@ class Accuracy:
     def __post_init__(self) -> None:
         if not 0.0 < self.spacing <= 2.0:
             raise UnusableParameter("spacing", self.spacing, "above 0 and at most 2")
+        if not 0.5 <= self.reach <= 4.0:
+            raise UnusableParameter("reach", self.reach, "from 0.5 to 4")
         if self.exact_run_length < 2:
             raise UnusableParameter("exact_run_length", self.exact_run_length, "at least 2")
         if not self.merging >= 2.0:

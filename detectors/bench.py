@@ -9,7 +9,7 @@ import numpy as np
 import scipy.sparse as sparse
 from numpy.typing import NDArray
 
-from detectors.counts import effective_dispersion, log_negative_binomial, log_one_off
+from detectors.counts import NegativeBinomialRows, effective_dispersion, log_negative_binomial, log_one_off
 from detectors.jump_step import jump_step
 from detectors.level_grid import LevelGrid
 from detectors.model import Model
@@ -68,6 +68,7 @@ class Bench:
     grid: LevelGrid
     level: FloatArray
     row_dispersion: FloatArray
+    rows: NegativeBinomialRows
     jump: Callable[[FloatArray], FloatArray]
     _walks: "OrderedDict[int, Walk]" = field(default_factory=OrderedDict)
 
@@ -86,8 +87,11 @@ class Bench:
         """Probability of a count at each node (missing counts have none)."""
         count = observation.count if observation.count is not None else 0
         mean = self.level * observation.exposure
-        dispersion = effective_dispersion(self.row_dispersion, observation.relative_sd)
-        log_nb = log_negative_binomial(count, mean, dispersion)
+        if observation.relative_sd == 0.0:
+            log_nb = self.rows.log_probability(count, observation.exposure)
+        else:
+            dispersion = effective_dispersion(self.row_dispersion, observation.relative_sd)
+            log_nb = log_negative_binomial(count, mean, dispersion)
         negative_binomial = np.exp(log_nb)
         share = self.model.one_off_share
         if share == 0.0:
@@ -101,12 +105,14 @@ class Bench:
 
 def bench_for(model: Model, dispersion: FloatArray, wander: FloatArray, grid: LevelGrid) -> Bench:
     """Prepare the matrices and tables of a set of grids."""
+    level, row_dispersion = np.exp(grid.log_level), dispersion[grid.pair]
     return Bench(
         model=model,
         dispersion=dispersion,
         wander=wander,
         grid=grid,
-        level=np.exp(grid.log_level),
-        row_dispersion=dispersion[grid.pair],
+        level=level,
+        row_dispersion=row_dispersion,
+        rows=NegativeBinomialRows(level, row_dispersion),
         jump=jump_step(model.jump, grid),
     )

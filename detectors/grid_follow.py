@@ -108,18 +108,18 @@ def _needed_range(state: FilterState) -> tuple[FloatArray, FloatArray]:
     middle = np.add.reduceat(mass * grid.log_level, grid.start) / total
     lowest = np.fmin.reduceat(level, grid.start)
     highest = np.fmax.reduceat(level, grid.start)
-    # The variance is the larger the lower the level, so the reach is taken where the mass is.
-    far = np.array([reach(float(m), dispersion[i : i + 1], REACH_OF_LEVEL)[0] for i, m in enumerate(middle)])
+    far = reach(middle, dispersion, REACH_OF_LEVEL * state.bench.model.accuracy.reach)
     lowest = np.maximum(np.fmin(lowest, middle - far), LOWEST_LOG_LEVEL)
     return lowest, np.fmax(highest, middle + far)
 
 
 def _reaching(state: FilterState, observation: Observation) -> FilterState:
     grid, dispersion = state.grid, state.bench.dispersion
-    short = ~covers(grid, observation, dispersion)
+    far = state.bench.model.accuracy.reach
+    short = ~covers(grid, observation, dispersion, far)
     if not short.any():
         return state
-    low, high = count_span(observation, dispersion, REACH_OF_COUNT)
+    low, high = count_span(observation, dispersion, REACH_OF_COUNT * far)
     lowest = np.where(short, np.minimum(low, grid.lowest), grid.lowest)
     highest = np.where(short, np.maximum(high, grid.highest), grid.highest)
     new = bounded_grid(grid.spacing, lowest, highest)

@@ -61,9 +61,10 @@ def first_grid(
     if isinstance(model.jump, IndependentLevels):
         return _fixed_grid(model.jump, dispersion.size, model.accuracy.spacing)
     middle = float(np.median([log_level_of(o) for o in counts]))
-    lowest, highest = _span(middle, dispersion, REACH_OF_LEVEL)
+    far = model.accuracy.reach
+    lowest, highest = _span(middle, dispersion, REACH_OF_LEVEL * far)
     for observation in counts:
-        low, high = count_span(observation, dispersion, REACH_OF_COUNT)
+        low, high = count_span(observation, dispersion, REACH_OF_COUNT * far)
         lowest, highest = np.minimum(lowest, low), np.maximum(highest, high)
     spacing = pair_spacing(model, dispersion, wander, reference_level(counts), max(len(counts), model.accuracy.early))
     return bounded_grid(spacing, lowest, highest)
@@ -85,9 +86,11 @@ def count_span(observation: Observation, dispersion: FloatArray, sds: float) -> 
     return lowest, highest
 
 
-def covers(grid: LevelGrid, observation: Observation, dispersion: FloatArray) -> NDArray[np.bool_]:
+def covers(
+    grid: LevelGrid, observation: Observation, dispersion: FloatArray, reach_factor: float
+) -> NDArray[np.bool_]:
     """Whether each pair's grid spans the levels that a count makes likely."""
-    lowest, highest = count_span(observation, dispersion, NEEDED_REACH)
+    lowest, highest = count_span(observation, dispersion, NEEDED_REACH * reach_factor)
     return (grid.lowest <= lowest + grid.spacing) & (highest - grid.spacing <= grid.highest)
 
 

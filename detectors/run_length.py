@@ -55,7 +55,7 @@ def _refolded(state: FilterState, observation: Observation) -> FilterState:
     """While counts are few: lay the grids anew for all of them and fold them again, if they do not suit."""
     model, counts = state.bench.model, (*state.early, observation)
     risen = reference_level(counts) > state.reference + TOLERATED_RISE
-    if not risen and bool(covers(state.grid, observation, state.bench.dispersion).all()):
+    if not risen and bool(covers(state.grid, observation, state.bench.dispersion, model.accuracy.reach).all()):
         return state
     folded, _ = _first(model, counts, state.early[0])
     for earlier in state.early[1:]:

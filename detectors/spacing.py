@@ -57,6 +57,6 @@ def on_ladder(spacing: FloatArray) -> FloatArray:
     return np.exp2(np.floor(2.0 * np.log2(spacing) + 1e-9) / 2.0)
 
 
-def reach(log_level: float, dispersion: FloatArray, sds: float) -> FloatArray:
+def reach(log_level: float | FloatArray, dispersion: FloatArray, sds: float) -> FloatArray:
     """Distance in the log level that `sds` standard deviations of one count's log span, bounded."""
     return np.minimum(sds * np.sqrt(count_variance(log_level, dispersion)), WIDEST_REACH)

@@ -46,7 +46,12 @@ _BY_ERROR: dict[str, Exit] = {
 # Bases of errors that write their own sentence for a person; any other error is a fault of the program, and
 # its traceback is shown.
 _OWN_SENTENCES = frozenset(
-    {*_BY_ERROR, "detectors.errors.DetectorError", "service.cli.errors.CommandError", "service.errors.ServiceError"}
+    {
+        *_BY_ERROR,
+        "detectors.errors.DetectorError",
+        "service.cli.errors.CommandError",
+        "service.errors.ServiceError",
+    }
 )
 
 

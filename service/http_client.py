@@ -35,6 +35,7 @@ CERTIFICATE_FAULTS = {
     19: "an issuer signed by itself is not trusted here",
     20: "its issuer is not known here",
     62: "it is for another host",
+    64: "it is for another host",
 }
 
 Headers = tuple[tuple[str, str], ...]

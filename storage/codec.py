@@ -72,7 +72,7 @@ def decode_history(body: bytes) -> History:
 def _check_groups(groups: RunLengths) -> None:
     if not len(groups.shortest) == len(groups.longest) == len(groups.probability):
         raise UnstorableValue("run-length groups with both ends and a probability each", groups)
-    ends = [-1, *(end for pair in zip(groups.shortest, groups.longest, strict=True) for end in pair)]
+    ends = [-1, *(whole(end) for pair in zip(groups.shortest, groups.longest, strict=True) for end in pair)]
     inside = all(low <= high for low, high in zip(ends[1::2], ends[2::2], strict=True))
     apart = all(before < after for before, after in zip(ends[::2], ends[1::2], strict=False))
     if not (inside and apart):

@@ -88,9 +88,15 @@ class Store:
         except PoolTimeout as error:
             raise StoreBusy(self.place, self._wait_seconds) from error
         except DBAPIError as error:
-            raise sqlite.explained(error.orig, self.place, self._wait_seconds) or error from error
+            ours = sqlite.explained(error.orig, self.place, self._wait_seconds)
+            if ours is None:
+                raise
+            raise ours from error
         except StatementError as error:
-            raise (error.orig if isinstance(error.orig, StoreError) else error) from None
+            # An error of our column types, which SQLAlchemy has wrapped.
+            if not isinstance(error.orig, StoreError):
+                raise
+            raise error.orig from None
 
 
 def open_store(address: str, *, wait_seconds: float = WAIT_SECONDS) -> Store:

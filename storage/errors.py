@@ -1,5 +1,7 @@
 """What can go wrong with the store. Each error writes its own sentence."""
 
+_SHOWN_AT_MOST = 200
+
 
 class StoreError(Exception):
     """Base of all errors of this package."""
@@ -75,7 +77,7 @@ class SchemaTooNew(StoreError):
         self.place, self.found, self.newest = place, found, newest
         super().__init__(
             f"The database {place} has {_tables(found)}, this program knows them up to {newest}. "
-            "Nothing was changed; use the newer program, or the copy made before the upgrade."
+            "Nothing was changed; use the newer program, or a copy of the database from before its upgrade."
         )
 
 
@@ -95,7 +97,7 @@ class UnstorableValue(StoreError, ValueError):
 
     def __init__(self, needed: str, got: object) -> None:
         self.needed, self.got = needed, got
-        super().__init__(f"The store needs {needed}; got {got!r}.")
+        super().__init__(f"The store needs {needed}; got {_shown(got)}.")
 
 
 class DamagedHistory(StoreError):
@@ -112,7 +114,8 @@ class DamagedRow(StoreError):
     def __init__(self, needed: str, got: object) -> None:
         self.needed, self.got = needed, got
         super().__init__(
-            f"A stored value should be {needed}, but is {got!r}; the database was changed by hand or damaged."
+            f"A stored value should be {needed}, but is {_shown(got)}. "
+            "The database was changed by hand or is damaged; restore a copy."
         )
 
 
@@ -148,3 +151,8 @@ class KeyTwice(StoreError, ValueError):
 
 def _tables(version: str | None) -> str:
     return "no tables yet" if version is None else f"tables of version {version}"
+
+
+def _shown(value: object) -> str:
+    text = repr(value)
+    return text if len(text) <= _SHOWN_AT_MOST else text[:_SHOWN_AT_MOST] + " ..."

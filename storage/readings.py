@@ -5,7 +5,7 @@ from dataclasses import dataclass, replace
 from datetime import UTC, datetime
 from typing import Any
 
-from sqlalchemy import Connection, Row, Select, bindparam, func, insert, select, update
+from sqlalchemy import Connection, Select, bindparam, func, insert, select, update
 
 from storage.errors import HeadMoved, KeyTwice
 from storage.tables import newest, readings, streams
@@ -98,7 +98,31 @@ def newest_readings(conn: Connection, stream_id: str) -> tuple[Reading, ...]:
 def key_readings(conn: Connection, stream_id: str, key: str) -> tuple[Reading, ...]:
     """All readings of one key, oldest first."""
     query = select(readings).where(readings.c.stream_id == stream_id, readings.c.key == key)
-    return tuple(map(_reading, conn.execute(query.order_by(readings.c.id))))
+    return readings_of(conn, query.order_by(readings.c.id))
+
+
+def all_readings(conn: Connection, stream_id: str) -> tuple[Reading, ...]:
+    """All readings of a stream, key by key, oldest first within a key."""
+    query = select(readings).where(readings.c.stream_id == stream_id)
+    return readings_of(conn, query.order_by(readings.c.key, readings.c.id))
+
+
+def newest_at(conn: Connection, source: str) -> At | None:
+    """How far the source reaches: the latest day or instant of any stored key of its streams."""
+    query = (
+        select(func.max(readings.c.at))
+        .select_from(streams)
+        .join(newest, newest.c.stream_id == streams.c.id)
+        .join(readings, readings.c.id == newest.c.reading_id)
+        .where(streams.c.source == source)
+    )
+    reaches: At | None = conn.scalar(query)
+    return reaches
+
+
+def readings_of(conn: Connection, query: Select[Any]) -> tuple[Reading, ...]:
+    """The readings that a query for whole rows finds."""
+    return tuple(Reading(**row._mapping) for row in conn.execute(query))
 
 
 def head(conn: Connection, stream_id: str) -> Head:
@@ -193,12 +217,5 @@ def _point_to_newest(
 
 
 def _newest(conn: Connection, stream_id: str) -> list[Reading]:
-    return list(map(_reading, conn.execute(_newest_query().where(newest.c.stream_id == stream_id))))
-
-
-def _newest_query() -> Select[Any]:
-    return select(readings).join(newest, newest.c.reading_id == readings.c.id)
-
-
-def _reading(row: Row[Any]) -> Reading:
-    return Reading(**row._mapping)
+    query = select(readings).join(newest, newest.c.reading_id == readings.c.id)
+    return list(readings_of(conn, query.where(newest.c.stream_id == stream_id)))

@@ -4,7 +4,7 @@ from dataclasses import asdict, dataclass
 from datetime import datetime
 from typing import Any
 
-from sqlalchemy import Connection, RowMapping, func, insert, select, update
+from sqlalchemy import Connection, RowMapping, insert, select, update
 
 from storage.errors import NoSuchRow
 from storage.tables import rounds
@@ -18,8 +18,9 @@ BROKEN_OFF = "broken off"
 
 KEPT_OUT_AT_MOST = 100
 _TEXT_AT_MOST = 300
-# The rows kept out are shown for this many rounds of a source; their number stays for ever.
+# The rows kept out are shown for so many rounds of a source that had any; their number stays for ever.
 ROUNDS_WITH_DETAIL = 50
+_AT_ONCE = 1000
 
 
 @dataclass(frozen=True, slots=True)
@@ -111,12 +112,18 @@ def list_rounds(conn: Connection, *, source: str | None = None, limit: int = 50)
     return tuple(_round(row._mapping) for row in conn.execute(query))
 
 
+def last_good_round(conn: Connection, source: str) -> Round | None:
+    """The newest round that reached the source, whether or not it found anything new."""
+    good = select(rounds).where(rounds.c.source == source, rounds.c.outcome.in_((GOOD, NOTHING_NEW)))
+    row = conn.execute(good.order_by(rounds.c.id.desc()).limit(1)).first()
+    return None if row is None else _round(row._mapping)
+
+
 def last_good_rounds(conn: Connection) -> dict[str, Round]:
-    """Of each source the newest round that reached it, whether or not it found anything new."""
-    good = rounds.c.outcome.in_((GOOD, NOTHING_NEW))
-    newest = select(func.max(rounds.c.id)).where(good).group_by(rounds.c.source)
-    found = conn.execute(select(rounds).where(rounds.c.id.in_(newest)))
-    return {row.source: _round(row._mapping) for row in found}
+    """The last good round of each source that has one."""
+    sources = conn.scalars(select(rounds.c.source).distinct()).all()
+    found = {source: last_good_round(conn, source) for source in sources}
+    return {source: one for source, one in found.items() if one is not None}
 
 
 def _clipped(row: KeptOutRow) -> dict[str, Any]:
@@ -125,10 +132,9 @@ def _clipped(row: KeptOutRow) -> dict[str, Any]:
 
 def _forget_old_detail(conn: Connection, round_id: int) -> None:
     source = select(rounds.c.source).where(rounds.c.id == round_id).scalar_subquery()
-    same = select(rounds.c.id).where(rounds.c.source == source).order_by(rounds.c.id.desc())
-    oldest_shown = same.offset(ROUNDS_WITH_DETAIL).limit(1).scalar_subquery()
-    old = (rounds.c.source == source) & (rounds.c.id <= oldest_shown) & rounds.c.kept_out.is_not(None)
-    conn.execute(update(rounds).where(old).values(kept_out=None))
+    detailed = select(rounds.c.id).where(rounds.c.source == source, rounds.c.kept_out.is_not(None))
+    old = conn.scalars(detailed.order_by(rounds.c.id.desc()).offset(ROUNDS_WITH_DETAIL).limit(_AT_ONCE)).all()
+    conn.execute(update(rounds).where(rounds.c.id.in_(old)).values(kept_out=None))
 
 
 def _round(row: RowMapping) -> Round:

@@ -3,6 +3,7 @@
 import sqlite3
 from contextlib import closing
 from pathlib import Path
+from time import sleep
 from typing import Any
 
 from sqlalchemy import URL, Connection, Engine, create_engine, event
@@ -33,6 +34,7 @@ _REMEDIES = {
     sqlite3.SQLITE_PERM: ("access is denied", "Check who may read and write there."),
     sqlite3.SQLITE_AUTH: ("access is denied", "Check who may read and write there."),
 }
+_TRIES = 200
 _BUSY = (sqlite3.SQLITE_BUSY, sqlite3.SQLITE_LOCKED)
 
 
@@ -68,9 +70,12 @@ def prepare_file(path: Path, *, wait_seconds: float) -> None:
     try:
         with closing(sqlite3.connect(path, timeout=wait_seconds, isolation_level=None)) as connection:
             _check_owner(connection, path)
-            mode = connection.execute("PRAGMA journal_mode = WAL").fetchone()[0]
+            mode = _write_ahead(connection, wait_seconds)
     except sqlite3.Error as error:
-        raise explained(error, str(path), wait_seconds) or error from error
+        ours = explained(error, str(path), wait_seconds)
+        if ours is None:
+            raise
+        raise ours from error
     if mode != "wal":
         raise StoreUnusable(
             str(path), "its file system has no write-ahead logging", "Put it on a local disk."
@@ -146,6 +151,23 @@ def _check_owner(connection: sqlite3.Connection, path: Path) -> None:
     (owner,) = _column(connection, "PRAGMA application_id")
     if tables and owner != APPLICATION_ID:
         raise ForeignDatabase(str(path), tuple(tables))
+
+
+def _write_ahead(connection: sqlite3.Connection, wait_seconds: float) -> Any:
+    # SQLite does not wait for its lock here: two programs that open a new file at once would fail.
+    for _ in range(_TRIES):
+        try:
+            return _switch(connection)
+        except sqlite3.OperationalError as error:
+            if error.sqlite_errorcode & 0xFF not in _BUSY:
+                raise
+        sleep(wait_seconds / _TRIES)
+    return _switch(connection)
+
+
+def _switch(connection: sqlite3.Connection) -> Any:
+    (mode,) = _column(connection, "PRAGMA journal_mode = WAL")
+    return mode
 
 
 def _column(connection: sqlite3.Connection, statement: str) -> list[Any]:

@@ -143,6 +143,16 @@ newest = Table(
     **_STRICT,
 )
 
+# The reading that held when a release was first read at its final age: it counts, whatever is read later.
+ripe = Table(
+    "ripe",
+    metadata,
+    Column("stream_id", Name, ForeignKey("streams.id"), primary_key=True),
+    Column("key", Name, primary_key=True),
+    _whole("reading_id", ForeignKey("readings.id")),
+    **_STRICT,
+)
+
 checkpoints = Table(
     "checkpoints",
     metadata,

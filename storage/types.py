@@ -15,7 +15,6 @@ At: TypeAlias = date | datetime
 """Where a count lies: a calendar day, or an aware instant."""
 
 LARGEST_WHOLE = 2**53
-_INSTANT_FORM = "%Y-%m-%dT%H:%M:%S.%fZ"
 _DAY_LENGTH = len("2026-03-02")
 _SPOILS_TEXT = {0: "\ufffd"} | dict.fromkeys(range(0xD800, 0xE000), "\ufffd")
 
@@ -44,8 +43,11 @@ def instant_text(value: object) -> str:
     """An aware datetime as UTC text of fixed width, so that text order is time order."""
     if not isinstance(value, datetime) or value.utcoffset() is None:
         raise UnstorableValue("an instant with its time zone", value)
-    utc = value.astimezone(UTC)
-    return f"{utc.year:04d}{utc.strftime(_INSTANT_FORM[2:])}"
+    try:
+        utc = value.astimezone(UTC)
+    except OverflowError as error:
+        raise UnstorableValue("an instant of the years 1 to 9999 in UTC", value) from error
+    return utc.replace(tzinfo=None).isoformat(timespec="microseconds") + "Z"
 
 
 def at_text(value: object) -> str:

@@ -7,6 +7,8 @@ from sqlalchemy import Connection, Table, insert, select, update
 
 from storage.errors import NoSuchRow
 
+_SINGULAR = {"deliveries": "delivery", "rounds": "round", "shifts": "shift", "streams": "stream"}
+
 
 def insert_new(conn: Connection, table: Table, rows: Sequence[Mapping[str, Any]]) -> None:
     """Inserts the rows, of which there may be none."""
@@ -26,4 +28,4 @@ def change_one(conn: Connection, table: Table, id: object, values: Mapping[str, 
     """Changes the row with this id, which must be there."""
     done = conn.execute(update(table).where(table.c.id == id).values(**values))
     if done.rowcount != 1:
-        raise NoSuchRow(table.name, id)
+        raise NoSuchRow(_SINGULAR[table.name], id)

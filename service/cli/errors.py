@@ -25,7 +25,9 @@ class AlreadyThere(CommandError):
 
     def __init__(self, path: object) -> None:
         self.path = path
-        super().__init__(f"{path} is there already and is left as it is. Give another path, or move it away first.")
+        super().__init__(
+            f"{path} is there already and is left as it is. Give another path, or move it away first."
+        )
 
 
 class MixedInstallation(CommandError):

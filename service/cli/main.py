@@ -38,10 +38,10 @@ EXIT_CODES = "\b\nExit codes:\n" + "\n".join(f"{code.value:>5}  {text}" for code
 class LazyGroup(click.Group):
     """Imports the file of a command when the command is asked for."""
 
-    def list_commands(self, ctx: click.Context) -> list[str]:
+    def list_commands(self, ctx: click.Context) -> list[str]:  # noqa: ARG002
         return list(COMMANDS)
 
-    def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:
+    def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:  # noqa: ARG002
         if cmd_name not in COMMANDS:
             return None
         command: click.Command = import_module(f"service.cli.commands.{cmd_name.replace('-', '_')}").command
@@ -59,7 +59,7 @@ class LazyGroup(click.Group):
     metavar="FILE",
     help="The settings file.",
 )
-@click.version_option(version(), prog_name="knickpoint")
+@click.version_option(version(), prog_name="knickpoint", message="%(prog)s %(version)s")
 @click.pass_context
 def knickpoint(ctx: click.Context, settings: Path) -> None:
     """Tells the people who look after serial releases when the level of a show has really moved."""

@@ -9,6 +9,7 @@ from typing import Any, TypeVar
 import click
 
 SETTINGS_VARIABLE = "KNICKPOINT_SETTINGS"
+MOMENT = "a day or an instant of ISO 8601, such as 2026-03-02 or 2026-03-02T14:00+01:00"
 
 Decorated = TypeVar("Decorated", bound=Callable[..., Any])
 
@@ -35,7 +36,9 @@ def settings_option(function: Decorated) -> Decorated:
 
 def json_option(function: Decorated) -> Decorated:
     """`--json`: for machines."""
-    return click.option("--json", "as_json", is_flag=True, help="One JSON document instead of a table.")(function)
+    return click.option("--json", "as_json", is_flag=True, help="One JSON document instead of a table.")(
+        function
+    )
 
 
 def limit_option(default: int) -> Callable[[Decorated], Decorated]:
@@ -49,7 +52,7 @@ def limit_option(default: int) -> Callable[[Decorated], Decorated]:
     )
 
 
-class MomentType(click.ParamType):
+class MomentType(click.ParamType[datetime.date]):
     """A day or an instant of ISO 8601."""
 
     name = "moment"
@@ -57,17 +60,19 @@ class MomentType(click.ParamType):
     def convert(
         self, value: object, param: click.Parameter | None, ctx: click.Context | None
     ) -> datetime.date | datetime.datetime:
-        text = str(value).strip()
-        for read in (datetime.date.fromisoformat, datetime.datetime.fromisoformat):
-            try:
-                return read(text)
-            except ValueError:
-                continue
-        self.fail(
-            f"needed is a day or an instant of ISO 8601, such as 2026-03-02 or 2026-03-02T14:00+01:00; got {text!r}.",
-            param,
-            ctx,
-        )
+        moment = _moment(str(value).strip())
+        if moment is None:
+            self.fail(f"needed is {MOMENT}; got {value!r}.", param, ctx)
+        return moment
+
+
+def _moment(text: str) -> datetime.date | datetime.datetime | None:
+    for read in (datetime.date.fromisoformat, datetime.datetime.fromisoformat):
+        try:
+            return read(text)
+        except ValueError:
+            continue
+    return None
 
 
 def _take_settings(ctx: click.Context, _param: click.Parameter, value: Path | None) -> None:

@@ -38,7 +38,7 @@ def show_report(report: Report) -> None:
 def _cells(line: ObservationLine) -> list[Cell]:
     return [
         line.index,
-        None if line.at is None else line.at.isoformat(),
+        line.at,
         line.count,
         _probability(line.recent_shift),
         line.run_length_mode,

@@ -13,12 +13,11 @@ from service.cli.sparkline import BLOCKS, PLAIN_BLOCKS
 
 Cell = str | int | float | bool | datetime.date | None
 PLAIN_WIDTH = 100
-NUMBER_DIGITS = 4
 
 
 def show_json(value: object) -> None:
     """One JSON document on standard output, which pipes get as UTF-8 whatever the locale says."""
-    click.get_binary_stream("stdout").write(json_text(value).encode() + b"\n")
+    click.echo(json_text(value).encode())
 
 
 def show_table(columns: Sequence[str], rows: Sequence[Sequence[Cell]]) -> None:
@@ -32,7 +31,9 @@ def show_table(columns: Sequence[str], rows: Sequence[Sequence[Cell]]) -> None:
             say(line)
 
 
-def plain_lines(columns: Sequence[str], cells: Sequence[Sequence[str]], right: Sequence[bool]) -> Iterator[str]:
+def plain_lines(
+    columns: Sequence[str], cells: Sequence[Sequence[str]], right: Sequence[bool]
+) -> Iterator[str]:
     """The lines of a table without any drawing; nothing is cut off, since a program may read it."""
     every = [list(columns), *cells]
     widths = [max(len(row[place]) for row in every) for place in range(len(columns))]
@@ -63,9 +64,10 @@ def cell_text(cell: Cell) -> str:
 
 def number_text(value: float) -> str:
     """A figure to four digits, large ones in full and with spaces between thousands."""
-    if abs(value) >= 10 ** (NUMBER_DIGITS - 1):
+    # Figures that rounding lifts to the next thousand belong to it.
+    if abs(value) >= 999.95:
         return f"{value:,.0f}".replace(",", " ")
-    return f"{value:.{NUMBER_DIGITS - 1}f}" if abs(value) < 1 else f"{value:.{NUMBER_DIGITS}g}"
+    return f"{value:.3f}" if abs(value) < 1 else f"{value:.4g}"
 
 
 def say(text: str) -> None:

@@ -20,7 +20,9 @@ def sparkline(counts: Sequence[int | None], width: int, blocks: str = BLOCKS) ->
     if not there:
         return MISSING * len(values)
     low, high = there[0], there[int(_FULL_FROM * (len(there) - 1))]
-    return "".join(MISSING if value is None else blocks[_step(value, low, high, len(blocks))] for value in values)
+    return "".join(
+        MISSING if value is None else blocks[_step(value, low, high, len(blocks))] for value in values
+    )
 
 
 def _averaged(counts: Sequence[int | None], width: int) -> Iterator[float | None]:

@@ -10,7 +10,9 @@ class NothingToReplay(ReplayError):
 
     def __init__(self, path: object, kept_out: int) -> None:
         self.path, self.kept_out = path, kept_out
-        rows = f"none of its {kept_out} rows can be used" if kept_out else "it has no rows below its header line"
+        rows = (
+            f"none of its {kept_out} rows can be used" if kept_out else "it has no rows below its header line"
+        )
         super().__init__(f"{path} cannot be replayed: {rows}. Needed are the columns at and count.")
 
 

@@ -130,5 +130,7 @@ def _or(wished: Value | None, plain: Value) -> Value:
 
 def _jump(smallest_shift: float) -> JumpPrior:
     if not 0.0 <= smallest_shift < math.inf:
-        raise UnusableParameter("smallest_shift", smallest_shift, "a share of at least 0, such as 0.15 for 15 %")
+        raise UnusableParameter(
+            "smallest_shift", smallest_shift, "a share of at least 0, such as 0.15 for 15 %"
+        )
     return JumpPrior(smallest=math.log1p(smallest_shift))

@@ -28,7 +28,9 @@ class Placed:
 One = TypeVar("One", Entry, Placed)
 
 
-def place_intervals(entries: Sequence[Entry], interval: Interval, zone: ZoneInfo | None) -> tuple[Placed, ...]:
+def place_intervals(
+    entries: Sequence[Entry], interval: Interval, zone: ZoneInfo | None
+) -> tuple[Placed, ...]:
     """The rows of a calendar stream, earliest first.
 
     Without a zone an instant counts for the date that is written in the file; with one, for the date that
@@ -44,7 +46,9 @@ def place_intervals(entries: Sequence[Entry], interval: Interval, zone: ZoneInfo
     placed = sorted(
         (_place(entry, position_of(axis, _at(entry.at, interval, zone))) for entry in entries), key=_position
     )
-    _require_different(placed, _position, lambda one: f"the {interval} {label_of(axis, _position(one))}", ONE_ROW)
+    _require_different(
+        placed, _position, lambda one: f"the {interval} {label_of(axis, _position(one))}", ONE_ROW
+    )
     return tuple(placed)
 
 
@@ -71,7 +75,9 @@ def _at(at: At, interval: Interval, zone: ZoneInfo | None) -> At:
 
 
 def _moment(at: At) -> datetime.datetime:
-    return at if isinstance(at, datetime.datetime) else datetime.datetime(at.year, at.month, at.day, tzinfo=UTC)
+    return (
+        at if isinstance(at, datetime.datetime) else datetime.datetime(at.year, at.month, at.day, tzinfo=UTC)
+    )
 
 
 def _position(one: Placed) -> int:

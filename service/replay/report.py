@@ -6,7 +6,7 @@ from detectors.judge import Rule
 from detectors.model import Model
 from detectors.posterior import Announcement, Posterior, Quantiles
 from service.replay.run import Replayed, indices
-from service.replay.table import At, Entry, Table
+from service.replay.table import Entry, Table
 from service.sources.document import KeptOut
 
 Triple = tuple[float, float, float]
@@ -17,7 +17,7 @@ class ObservationLine:
     """One row of the file. What is not known of it is None: all of it where the count is missing."""
 
     index: int
-    at: At | None
+    at: str | None
     count: int | None
     recent_shift: float | None = None
     run_length_mode: int | None = None
@@ -84,10 +84,10 @@ def report(
 def observation_line(entry: Entry, posterior: Posterior | None) -> ObservationLine:
     """One row with what was said of it."""
     if posterior is None:
-        return ObservationLine(entry.index, entry.at, entry.count)
+        return ObservationLine(entry.index, entry.at.isoformat(), entry.count)
     return ObservationLine(
         entry.index,
-        entry.at,
+        entry.at.isoformat(),
         entry.count,
         posterior.recent_shift,
         posterior.run_length_mode,

@@ -54,7 +54,9 @@ def require_threshold(model: Model, rule: Rule) -> None:
     floor = prior_floor(model.gap, rule)
     if rule.threshold <= floor:
         raise UnusableParameter(
-            "threshold", rule.threshold, f"above {floor:.3f}, which counts that say nothing reach with this window"
+            "threshold",
+            rule.threshold,
+            f"above {floor:.3f}, which counts that say nothing reach with this window",
         )
 
 

@@ -53,7 +53,9 @@ def read_table(path: Path, zone: ZoneInfo | None, monotonic: Callable[[], float]
         If no row can be used.
     """
     there = frozenset(OPTIONAL) & _header(path)
-    fields = FieldPlan("at", "count", release=_if_there("release", there), exposure=_if_there("exposure", there))
+    fields = FieldPlan(
+        "at", "count", release=_if_there("release", there), exposure=_if_there("exposure", there)
+    )
     plan = CsvPlan(path.name, FilePlace(path), fields, zone or ZoneInfo("UTC"))
     document = read_csv(plan, Validators(), monotonic)
     if not document.rows:

@@ -22,7 +22,9 @@ def alert_sentence(alert: AlertLine, report: Report) -> str:
 
 def level_text(level: tuple[float, float, float]) -> str:
     """A level with its range."""
-    low, mid, high = (f"{value:,.0f}".replace(",", " ") if value >= 100 else f"{value:.3g}" for value in level)
+    low, mid, high = (
+        f"{value:,.0f}".replace(",", " ") if value >= 100 else f"{value:.3g}" for value in level
+    )
     return f"{mid} ({low} to {high})"
 
 
@@ -46,8 +48,7 @@ def too_short_sentence(report: Report) -> str | None:
 
 
 def _place(report: Report, index: int) -> str:
-    at = report.observations[index].at
-    return f"{at.isoformat() if at else '?'} (row {index})"
+    return f"{report.observations[index].at} (row {index})"
 
 
 def _percent(share: float) -> str:

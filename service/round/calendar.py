@@ -51,7 +51,7 @@ class Interval:
 
 @dataclass(frozen=True, slots=True)
 class Axis:
-    """The axis of a calendar stream. Intervals of several days are counted from the anchor, which begins one."""
+    """The axis of a calendar stream. Intervals of several days are counted from the anchor."""
 
     interval: Interval
     zone: ZoneInfo
@@ -100,7 +100,7 @@ def end_of(axis: Axis, position: int) -> datetime.datetime:
 
 
 def at_of(axis: Axis, position: int) -> At:
-    """An interval as a calendar value: its first day, or for an hour its first instant in the stream's zone."""
+    """An interval as a calendar value: its first day; for an hour its first instant in the zone."""
     if _is_hourly(axis):
         return start_of(axis, position).astimezone(axis.zone)
     return _first_day(axis, position)
@@ -109,7 +109,10 @@ def at_of(axis: Axis, position: int) -> At:
 def key_of(axis: Axis, position: int) -> str:
     """The stable key of an interval: the ISO 8601 form of its start."""
     at = at_of(axis, position)
-    return at.isoformat(timespec="minutes") if isinstance(at, datetime.datetime) else at.isoformat()
+    if not isinstance(at, datetime.datetime):
+        return at.isoformat()
+    # Seconds only where the zone has them: offsets did before clocks were agreed on.
+    return at.isoformat(timespec="seconds" if at.second else "minutes")
 
 
 def label_of(axis: Axis, position: int) -> str:

@@ -76,9 +76,8 @@ def _from_file(plan: CsvPlan, place: FilePlace, validators: Validators) -> tuple
 
 
 def _bytes_of(plan: CsvPlan, place: FilePlace) -> bytes:
-    # Without O_NONBLOCK, opening a pipe that nobody writes to would wait for ever.
-    descriptor = os.open(place.path, os.O_RDONLY | getattr(os, "O_NONBLOCK", 0))
-    with open(descriptor, "rb") as file:  # noqa: PTH123 - of a descriptor
+    with open(place.path, "rb", opener=_without_waiting) as file:
+        descriptor = file.fileno()
         before = os.fstat(descriptor)
         if not stat.S_ISREG(before.st_mode):
             raise _unreadable(plan, f"{place.path} is no ordinary file.")
@@ -91,6 +90,11 @@ def _bytes_of(plan: CsvPlan, place: FilePlace) -> bytes:
     if (before.st_mtime_ns, before.st_size) != (after.st_mtime_ns, after.st_size):
         raise _unreadable(plan, f"{place.path} was written to while it was read; the next round tries again.")
     return body
+
+
+def _without_waiting(path: str, flags: int) -> int:
+    """Opening a pipe that nobody writes to would wait for ever."""
+    return os.open(path, flags | getattr(os, "O_NONBLOCK", 0))
 
 
 def _text(plan: CsvPlan, body: bytes) -> str:

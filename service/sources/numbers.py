@@ -9,7 +9,7 @@ from service.sources.values import UnusableValue
 LARGEST_COUNT = 2**53
 _WHOLE = re.compile(r"[+-]?[0-9]{1,40}(\.0{0,40})?")
 _NUMBER = re.compile(r"[+-]?([0-9]{1,40}(\.[0-9]{0,40})?|\.[0-9]{1,40})([eE][+-]?[0-9]{1,3})?")
-_SEPARATED = re.compile(r"[+-]?[0-9]{1,3}([,.'’_   ][0-9]{3})+([.,][0-9]*)?")
+_SEPARATED = re.compile("[+-]?[1-9][0-9]{0,2}([,.'\u2019_ \u00a0\u2009\u202f][0-9]{3})+([.,][0-9]*)?")
 
 
 def read_count(value: object) -> int | None:
@@ -37,11 +37,10 @@ def read_exposure(value: object) -> float | None:
     """An exposure above 0; nothing at all is an unknown one."""
     if _is_empty(value):
         return None
-    text = value.strip() if isinstance(value, str) else value
-    if isinstance(text, str) and _NUMBER.fullmatch(text):
-        number = float(text)
-    elif isinstance(text, int | float | Decimal) and not isinstance(text, bool):
-        number = _float(text)
+    if isinstance(value, str) and _NUMBER.fullmatch(value.strip()):
+        number = float(value)
+    elif isinstance(value, int | float | Decimal) and not isinstance(value, bool):
+        number = _float(value)
     else:
         raise UnusableValue("exposure", "a number", value)
     if not 0.0 < number < math.inf:
@@ -56,16 +55,17 @@ def _number(value: object) -> int | float | Decimal | None:
         return _from_text(value.strip(), value)
     if isinstance(value, bool) or not isinstance(value, int | float | Decimal):
         raise UnusableValue("count", "a whole number", value)
-    if not isinstance(value, int) and not math.isfinite(value):
+    if not _is_finite(value):
         raise UnusableValue("count", "a finite number", value)
     return value
 
 
 def _from_text(text: str, value: object) -> int:
-    if _WHOLE.fullmatch(text):
-        return int(text.partition(".")[0])
+    # Before anything else: 12.000 is twelve to one program and twelve thousand to another.
     if _SEPARATED.fullmatch(text):
         raise UnusableValue("count", "a number without thousands separators, which are not guessed", value)
+    if _WHOLE.fullmatch(text):
+        return int(text.partition(".")[0])
     if _NUMBER.fullmatch(text):
         raise UnusableValue("count", "a whole number, written without an exponent", value)
     raise UnusableValue("count", "a whole number, or empty where it is missing", value)
@@ -75,8 +75,17 @@ def _is_empty(value: object) -> bool:
     return value is None or (isinstance(value, str) and not value.strip())
 
 
+def _is_finite(number: int | float | Decimal) -> bool:
+    """Without a detour over floats, which neither hold a large decimal nor take a signalling NaN."""
+    return (
+        number.is_finite()
+        if isinstance(number, Decimal)
+        else isinstance(number, int) or math.isfinite(number)
+    )
+
+
 def _float(number: int | float | Decimal) -> float:
     try:
-        return float(number)
+        return float(number) if _is_finite(number) else math.nan
     except OverflowError:
         return math.inf

@@ -64,7 +64,7 @@ def open_engine(plan: SqlPlan, deadline: Deadline) -> Engine:
 
 
 def hidden_parts(address: str) -> tuple[str, ...]:
-    """Texts of an address that must not be shown: all of it, and its longer parts."""
+    """Texts of an address that no error may show: all of it, and its longer parts."""
     url = _parsed(address)
     if url is None:
         return (address,)
@@ -72,6 +72,13 @@ def hidden_parts(address: str) -> tuple[str, ...]:
     parts = [url.username, url.password, url.host, url.database, *values]
     longer = [str(part) for part in parts if part and len(str(part)) >= SHORTEST_HIDDEN_PART]
     return (address, *longer)
+
+
+def login_texts(address: str) -> tuple[str, ...]:
+    """The texts of an address that no row may show; names of hosts and users may well stand in rows."""
+    url = _parsed(address)
+    password = str(url.password or "") if url is not None else ""
+    return (address, password) if len(password) >= SHORTEST_HIDDEN_PART else (address,)
 
 
 def begin_read_only(connection: Connection, deadline: Deadline) -> None:
@@ -126,6 +133,8 @@ def _sqlite(plan: SqlPlan, url: URL, deadline: Deadline) -> Engine:
             f"file:{quote(path)}?mode=ro", uri=True, timeout=max(0.0, deadline.remaining())
         )
         connection.set_progress_handler(lambda: int(deadline.remaining() <= 0), STEPS_BETWEEN_LOOKS)
+        # mode=ro holds for this file only: ATTACH would still make another one.
+        connection.setlimit(sqlite3.SQLITE_LIMIT_ATTACHED, 0)
         connection.execute("PRAGMA query_only = ON").close()
         return connection
 

@@ -10,7 +10,7 @@ from service.sources.document import Document, KeptOut, Row
 from service.sources.errors import SourceUnreadable
 from service.sources.plans import SqlPlan
 from service.sources.rows import RowRules, cut, hide, understand
-from service.sources.sql_engine import begin_read_only, hidden_parts, open_engine
+from service.sources.sql_engine import begin_read_only, hidden_parts, login_texts, open_engine
 from service.sources.table import columns_of
 
 BATCH = 1000
@@ -37,7 +37,7 @@ def read_sql(plan: SqlPlan, monotonic: Monotonic) -> Document:
 
 def _document(plan: SqlPlan, header: list[str], rows: list[Cells]) -> Document:
     columns = columns_of(plan.name, plan.fields, header)
-    rules = RowRules(plan.zone, hidden_parts(plan.address))
+    rules = RowRules(plan.zone, login_texts(plan.address))
     understood = [
         understand({name: cells[place] for name, place in columns}, number, rules)
         for number, cells in enumerate(rows, start=1)

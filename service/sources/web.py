@@ -11,6 +11,8 @@ from service.sources.errors import SourceUnreadable
 from service.sources.plans import Headers, WebPlace
 
 LONGEST_VALIDATOR = 500
+# Anything shorter guards nothing, and hiding it would make a text unreadable.
+SHORTEST_SECRET = 6
 SHORTEST_SECRET_PART = 8
 
 
@@ -33,8 +35,8 @@ def secrets_of(place: WebPlace) -> tuple[str, ...]:
         whole.append(place.address)
     parts = [part for text in whole for part in re.split(r"[\s/?&=;@:,]+", text)]
     login = urlsplit(place.address).password if "@" in place.address else None
-    longer = [part for part in parts if len(part) >= SHORTEST_SECRET_PART]
-    return tuple(dict.fromkeys(filter(None, (*whole, *longer, login))))
+    long_enough = [text for text in (*whole, login or "") if len(text) >= SHORTEST_SECRET]
+    return tuple(dict.fromkeys(long_enough + [part for part in parts if len(part) >= SHORTEST_SECRET_PART]))
 
 
 def require_success(answer: Answer, source: str, named: str) -> None:

@@ -5,6 +5,7 @@ from datetime import UTC, datetime
 from pathlib import Path
 
 import pytest
+
 from storage import migrate
 from storage.engine import Store, open_store
 from storage.streams import SeenStream, see_streams
@@ -52,5 +53,3 @@ def stream(store: Store) -> str:
 @pytest.fixture
 def fresh_store(tmp_path: Path) -> Callable[[str], Store]:
     return lambda name: open_store(str(tmp_path / name), wait_seconds=2.0)
-
-

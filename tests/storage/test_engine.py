@@ -8,6 +8,7 @@ from pathlib import Path
 
 import pytest
 from sqlalchemy import text
+
 from storage import migrate
 from storage.engine import Store, open_existing_store, open_store
 from storage.errors import (

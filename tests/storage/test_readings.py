@@ -5,6 +5,7 @@ from datetime import UTC, date, datetime, timedelta
 import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
+
 from storage.engine import Store
 from storage.errors import HeadMoved, KeyTwice
 from storage.readings import (
@@ -78,7 +79,17 @@ def test_a_number_that_comes_back_is_a_new_reading(store: Store, stream: str, no
 
 def test_past_final_one_a_day_unless_it_falls(store: Store, stream: str):
     start = datetime(2026, 3, 2, 22, 0, tzinfo=UTC)
-    polled = [(0, 100), (0.5, 101), (1, 102), (1.5, 99), (1.75, 103), (2, 103), (2.5, 104), (12, 105), (26, 106)]
+    polled = [
+        (0, 100),
+        (0.5, 101),
+        (1, 102),
+        (1.5, 99),
+        (1.75, 103),
+        (2, 103),
+        (2.5, 104),
+        (12, 105),
+        (26, 106),
+    ]
     held = 0
     for hours, count in polled:
         with store.writing() as conn:
@@ -128,7 +139,9 @@ def test_instants_are_compared_as_instants(store: Store, stream: str, now: datet
     paris = datetime(2026, 3, 2, 15, tzinfo=ZoneInfo("Europe/Paris"))
     with store.writing() as conn:
         keep_readings(conn, stream, [episode("h", 1, at=paris)], now=now)
-        assert keep_readings(conn, stream, [episode("h", 1, at=paris.astimezone(UTC))], now=now).unchanged == 1
+        assert (
+            keep_readings(conn, stream, [episode("h", 1, at=paris.astimezone(UTC))], now=now).unchanged == 1
+        )
 
 
 def test_streams_do_not_mix(store: Store, stream: str, now: datetime):

@@ -7,7 +7,7 @@ import click
 from service.cli.options import json_option
 
 
-@click.command("replay")
+@click.command("replay", short_help="Run the counts of a CSV file through the detector.")
 @click.argument("file", type=click.Path(path_type=Path, dir_okay=False))
 @json_option
 @click.option(

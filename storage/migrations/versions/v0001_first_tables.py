@@ -23,6 +23,7 @@ def upgrade() -> None:
     _readings()
     _newest()
     _posteriors()
+    _ripe()
     _shifts()
     _deliveries()
     _attempts()
@@ -213,6 +214,19 @@ def _posteriors() -> None:
         unique=False,
         sqlite_where=sa.text("superseded_utc IS NOT NULL"),
         postgresql_where=sa.text("superseded_utc IS NOT NULL"),
+    )
+
+
+def _ripe() -> None:
+    op.create_table(
+        "ripe",
+        sa.Column("stream_id", TEXT, nullable=False),
+        sa.Column("key", TEXT, nullable=False),
+        sa.Column("reading_id", WHOLE, nullable=False),
+        sa.ForeignKeyConstraint(["reading_id"], ["readings.id"], name=op.f("fk_ripe_reading_id")),
+        sa.ForeignKeyConstraint(["stream_id"], ["streams.id"], name=op.f("fk_ripe_stream_id")),
+        sa.PrimaryKeyConstraint("stream_id", "key", name=op.f("pk_ripe")),
+        sqlite_strict=True,
     )
 
 

@@ -103,11 +103,9 @@ def test_a_document_that_does_not_fit_is_unreadable(house, tools, body, rows, wh
 
 
 def test_digits_without_end_cost_their_row_only(house, tools):
-    house.serve(
-        "/counts",
-        '[{"day": "2026-03-01", "plays": %s}, {"day": "2026-03-02", "plays": 1e400}, {"day": "2026-03-03", "plays": 3}]'
-        % ("9" * 6000),
-    )
+    plays = ["9" * 6000, "1e400", "3"]
+    rows = [f'{{"day": "2026-03-0{day}", "plays": {digits}}}' for day, digits in enumerate(plays, start=1)]
+    house.serve("/counts", f"[{', '.join(rows)}]")
     document = read_document(plan(house), NONE, tools=tools)
     assert [row.count for row in document.rows] == [3]
     assert ["2^53" in out.why or "finite" in out.why for out in document.kept_out] == [True, True]
@@ -131,8 +129,15 @@ def test_secrets_stay_out_of_sentences_and_texts(house, tools):
     assert SECRET not in repr(given)
 
 
+def test_a_short_header_value_is_no_secret_and_spoils_no_text(house, tools):
+    house.serve("/counts", '[{"day": "2026-03-01", "plays": -2}]')
+    given = plan(house, headers=(("X-Version", "2"), ("Accept-Language", "en")))
+    (out,) = read_document(given, NONE, tools=tools).kept_out
+    assert out.text == 'at: "2026-03-01", count: -2'
+
+
 def test_a_login_in_the_address_is_sent_as_a_header_on_every_page(house, tools):
-    house.serve("/counts", '{"rows": [], "next": "%s/two"}' % house.address)
+    house.serve("/counts", json.dumps({"rows": [], "next": f"{house.address}/two"}))
     house.serve("/two", '{"rows": []}')
     given = plan(house, rows="$.rows[*]", paging=NextAddress("$.next"))
     place = WebPlace(given.place.address.replace("//", "//me:p%40ss@"), (), False)
@@ -201,7 +206,7 @@ def test_pages_that_go_round_or_have_no_end(house, tools):
     given = plan(house, rows="$.rows[*]", paging=NextAddress("$.next"))
     assert "page 2 names a page as the next that was read already" in unreadable(given, tools)
     for number in range(5):
-        house.serve(f"/p{number}", '{"rows": [], "next": "/p%d"}' % (number + 1))
+        house.serve(f"/p{number}", json.dumps({"rows": [], "next": f"/p{number + 1}"}))
     bounds = Bounds(deadline_seconds=5, most_pages=3)
     endless = plan(house, "/p0", rows="$.rows[*]", paging=NextAddress("$.next"), bounds=bounds)
     assert "more than the 3 pages" in unreadable(endless, tools)
@@ -213,7 +218,7 @@ def test_pages_that_go_round_or_have_no_end(house, tools):
     [("7", "must give one address or null"), ('"ftp://x/"', "no http or https"), ('["/a"]', "must give one")],
 )
 def test_a_next_page_must_be_an_address(house, tools, onward, why):
-    house.serve("/counts", '{"rows": [], "next": %s}' % onward)
+    house.serve("/counts", f'{{"rows": [], "next": {onward}}}')
     assert why in unreadable(plan(house, rows="$.rows[*]", paging=NextAddress("$.next")), tools)
 
 

@@ -31,6 +31,8 @@ DAY = datetime.date(2026, 3, 2)
         ("12", 12),
         (" 12 ", 12),
         ("12.0", 12),
+        ("12.000000", 12),
+        ("0.000", 0),
         ("+12", 12),
         ("012", 12),
         (-0.0, 0),
@@ -81,6 +83,7 @@ def test_counts(raw, count):
         ("1,234", "thousands separators"),
         ("1.234.567", "thousands separators"),
         ("1'234", "thousands separators"),
+        ("12.000", "thousands separators"),
         ("1 234", "thousands separators"),
         ("1\u202f234", "thousands separators"),
         ("1,234.0", "thousands separators"),
@@ -99,7 +102,8 @@ def test_counts(raw, count):
 def test_what_is_no_count(raw, needed):
     with pytest.raises(UnusableValue) as caught:
         read_count(raw)
-    assert str(caught.value).startswith(f"count must be {needed}")
+    assert str(caught.value).startswith("count must be ")
+    assert needed in str(caught.value)
     assert len(str(caught.value)) < 200
 
 
@@ -109,7 +113,7 @@ def test_a_count_is_exactly_its_number_or_refused(raw):
     try:
         count = read_count(raw)
     except UnusableValue:
-        if isinstance(raw, str) or not math.isfinite(raw):
+        if isinstance(raw, str) or not (raw.is_finite() if isinstance(raw, Decimal) else math.isfinite(raw)):
             return
         exact = Fraction(raw)
         out_of_range = (
@@ -139,7 +143,22 @@ def test_exposures(raw, exposure):
 
 
 @pytest.mark.parametrize(
-    "raw", [0, -1, math.nan, math.inf, "0", "1e999", "1,5", True, "x", 10**400, Decimal("1e-999999"), [1]]
+    "raw",
+    [
+        0,
+        -1,
+        math.nan,
+        math.inf,
+        "0",
+        "1e999",
+        "1,5",
+        True,
+        "x",
+        10**400,
+        Decimal("1e-999999"),
+        Decimal("sNaN"),
+        [1],
+    ],
 )
 def test_what_is_no_exposure(raw):
     with pytest.raises(UnusableValue, match="exposure must be"):
@@ -204,9 +223,10 @@ def test_times_that_clocks_skip_or_repeat():
 @pytest.mark.parametrize(
     "raw",
     [
-        None, "", "2026-13-01", "2026-02-30", "2026-W54", "02.03.2026", "3/2/2026", "2026-3-2", "yesterday", 20260302,
-        1772409600, 1772409600.0, True, "2026-03-02T25:00", "2026-03-02T14:00:60Z", "2026-03-02X14:00", "0001-01-01",
-        "9999-12-31", "2026-03-02T", "2026-03-02T14:00 Europe/Berlin", "2026-060", [], Several(2), "2026-03-02T14:00+25:00",
+        None, "", "2026-13-01", "2026-02-30", "2026-W54", "02.03.2026", "3/2/2026", "2026-3-2", "yesterday",
+        20260302, 1772409600, 1772409600.0, True, [], Several(2), "2026-03-02T25:00", "2026-03-02T14:00:60Z",
+        "2026-03-02X14:00", "2026-03-02T", "2026-03-02T14:00 Europe/Berlin", "2026-03-02T14:00+25:00",
+        "2026-060", "0001-01-01", "9999-12-31",
     ],
 )  # fmt: skip
 def test_what_is_no_date(raw):
@@ -224,10 +244,14 @@ def test_an_instant_written_down_is_read_back(instant):
 
 @given(st.text())
 def test_any_text_is_a_date_or_refused_in_a_short_sentence(text):
+    sentence = ""
     try:
-        assert isinstance(read_at(text, BERLIN), datetime.date)
+        read = read_at(text, BERLIN)
     except UnusableValue as error:
-        assert len(str(error)) < 250
+        sentence = str(error)
+    else:
+        assert 1000 <= read.year <= 9000
+    assert len(sentence) < 250
 
 
 @pytest.mark.parametrize(
@@ -280,7 +304,7 @@ raw_values = st.recursive(
 ALL_FIELDS = ("at", "count", "split", "release", "title", "exposure")
 
 
-@given(st.fixed_dictionaries({name: raw_values for name in ALL_FIELDS}))
+@given(st.fixed_dictionaries(dict.fromkeys(ALL_FIELDS, raw_values)))
 def test_any_row_is_understood_or_kept_out_in_plain_characters(raw):
     got = understand(raw, 1, RULES)
     if isinstance(got, KeptOut):

@@ -1,0 +1,26 @@
+"""`knickpoint try-outlet`: a test message to an outlet."""
+
+import click
+
+from service.cli.options import Given, json_option, settings_option
+
+
+@click.command("try-outlet", short_help="Send an outlet a message that says it is a test.")
+@click.argument("name")
+@json_option
+@settings_option
+@click.pass_context
+def command(ctx: click.Context, name: str, as_json: bool) -> None:
+    """Send the outlet NAME one message that says it is a test, and show the answer. Stores nothing."""
+    from service.cli.show import say, show_json
+    from service.exit_codes import Exit
+    from service.outlets.trial import try_outlet
+
+    given: Given = ctx.obj
+    tried = try_outlet(given.settings, name)
+    if as_json:
+        show_json(tried)
+    else:
+        say(tried.sentence)
+    if not tried.taken:
+        ctx.exit(Exit.NOT_DELIVERED)

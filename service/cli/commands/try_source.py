@@ -1,0 +1,28 @@
+"""`knickpoint try-source`: a source fetched once, shown as understood, and not stored."""
+
+import click
+
+from service.cli.options import Given, json_option, settings_option
+
+
+@click.command("try-source", short_help="Fetch a source once; show it, store nothing.")
+@click.argument("name")
+@click.option("--limit", type=click.IntRange(1), default=40, show_default=True, help="Show so many rows.")
+@json_option
+@settings_option
+@click.pass_obj
+def command(given: Given, name: str, limit: int, as_json: bool) -> None:
+    """Fetch the source NAME once and show its rows as understood, and those kept out. Stores nothing."""
+    from time import monotonic
+
+    from service.cli.show import show_json
+    from service.cli.source_view import document_json, show_document
+    from service.sources.document import Validators
+    from service.sources.open_source import Tools, read_document
+    from service.wiring import source_plan
+
+    document = read_document(source_plan(given.settings, name), Validators(), tools=Tools(monotonic))
+    if as_json:
+        show_json(document_json(name, document))
+    else:
+        show_document(name, document, limit)
