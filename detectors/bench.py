@@ -2,15 +2,15 @@
 
 import copy
 from collections import OrderedDict
-from collections.abc import Callable
 from dataclasses import dataclass, field
+from functools import cached_property
 
 import numpy as np
 import scipy.sparse as sparse
 from numpy.typing import NDArray
 
 from detectors.counts import NegativeBinomialRows, effective_dispersion, log_negative_binomial, log_one_off
-from detectors.jump_step import jump_step
+from detectors.jump_step import Map, jump_step
 from detectors.level_grid import LevelGrid
 from detectors.model import Model
 from detectors.observation import Observation
@@ -27,12 +27,22 @@ class Walk:
     """The random walk over one gap, with the row of each stored weight."""
 
     matrix: "sparse.csr_array"
-    row: IntArray
+    per_row: NDArray[np.int64]
+    in_single: NDArray[np.float32]
+
+    def plain(self, dtype: "np.dtype[np.floating]") -> "sparse.csr_array":
+        """The walk alone."""
+        if dtype != np.float32:
+            return self.matrix
+        result = copy.copy(self.matrix)
+        result.data = self.in_single
+        return result
 
     def scaled(self, factor: FloatArray, dtype: "np.dtype[np.floating]") -> "sparse.csr_array":
         """The walk followed by a multiplication of each row."""
+        data = self.in_single if dtype == np.float32 else self.matrix.data
         result = copy.copy(self.matrix)
-        result.data = (self.matrix.data * factor[self.row]).astype(dtype, copy=False)
+        result.data = data * np.repeat(factor.astype(dtype, copy=False), self.per_row)
         return result
 
 
@@ -69,15 +79,25 @@ class Bench:
     level: FloatArray
     row_dispersion: FloatArray
     rows: NegativeBinomialRows
-    jump: Callable[[FloatArray], FloatArray]
+    jump: Map
     _walks: "OrderedDict[int, Walk]" = field(default_factory=OrderedDict)
+
+    @cached_property
+    def dispersions(self) -> tuple[FloatArray, IntArray]:
+        """The values of the dispersion still considered, and which of them each pair has."""
+        return np.unique(self.dispersion, return_inverse=True)
+
+    @cached_property
+    def wanders(self) -> tuple[FloatArray, IntArray]:
+        """The values of the wander still considered, and which of them each pair has."""
+        return np.unique(self.wander, return_inverse=True)
 
     def walk(self, gap: int) -> Walk:
         """The random walk over a gap; the last few are kept."""
         known = self._walks.get(gap)
         if known is None:
             matrix = walk_matrix(self.grid, self.wander * np.sqrt(float(gap)))
-            known = Walk(matrix, np.repeat(np.arange(self.grid.rows), np.diff(matrix.indptr)))
+            known = Walk(matrix, np.diff(matrix.indptr).astype(np.int64), matrix.data.astype(np.float32))
             self._walks[gap] = known
             while len(self._walks) > MOST_WALKS:
                 self._walks.popitem(last=False)
@@ -105,7 +125,7 @@ class Bench:
 
 def bench_for(model: Model, dispersion: FloatArray, wander: FloatArray, grid: LevelGrid) -> Bench:
     """Prepare the matrices and tables of a set of grids."""
-    level, row_dispersion = np.exp(grid.log_level), dispersion[grid.pair]
+    level, row_dispersion = np.exp(grid.log_level), grid.spread(dispersion)
     return Bench(
         model=model,
         dispersion=dispersion,

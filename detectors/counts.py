@@ -1,6 +1,6 @@
-"""Probabilities of a count: negative binomial, and the broad one-off component.
+"""The negative binomial: probability of a count, its distribution function, an uncertain exposure.
 
-The negative binomial is evaluated in saddle-point form (Loader 2000): a term that depends on the count and
+It is evaluated in saddle-point form (Loader 2000): a term that depends on the count and
 the dispersion only, less a deviance that is the sum of two terms of at least 0. Differences of log gamma
 functions would lose seven digits at counts of a billion.
 """
@@ -10,7 +10,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.special import betainc, betaincc, expit, gammaincc, gammaln
+from scipy.special import betainc, betaincc, gammaincc, gammaln
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.intp]
@@ -185,80 +185,6 @@ def _stirling_error(n: FloatArray) -> FloatArray:
     return np.where(small, direct, series)
 
 
-def log_one_off(count: ArrayLike, mean: ArrayLike, tail: float) -> FloatArray:
-    """Log probability of counts under the broad component that stands for one-offs.
-
-    Parameters
-    ----------
-    count : array_like
-        Counts, whole numbers from 0 to 2^53.
-    mean : array_like
-        Means of the ordinary law, above 0; the median of this one.
-    tail : float
-        Exponent beta of both tails, above 0.
-
-    Returns
-    -------
-    ndarray
-        Natural logarithms; `count` and `mean` are broadcast against each other.
-
-    Notes
-    -----
-    The log-logistic distribution F(y) = 1 / (1 + (mean / y)^beta) between the edges x - 1/2 and x + 1/2, the
-    lowest edge being 0. It sums to 1 exactly. At beta = 1, Q(0) = (1/2) / (m + 1/2) and
-    Q(x) = m / ((m + x - 1/2) (m + x + 1/2)).
-
-    Examples
-    --------
-    >>> np.exp(log_one_off([0, 1, 2], 0.5, 1.0)).round(6).tolist()
-    [0.5, 0.25, 0.083333]
-    """
-    x = np.asarray(count, dtype=np.float64)
-    m = np.asarray(mean, dtype=np.float64)
-    if tail == 1.0:
-        beyond_lower = np.where(x == 0.0, m, m + (x - 0.5))
-        log_share: FloatArray = np.log(m / beyond_lower / (m + (x + 0.5)) * np.where(x == 0.0, 0.5, 1.0))
-        return log_share
-    log_m = np.log(m)
-    below_upper = -np.logaddexp(0.0, tail * (log_m - np.log(x + 0.5)))
-    lower = np.maximum(x - 0.5, 0.5)
-    above_lower = -np.logaddexp(0.0, tail * (np.log(lower) - log_m))
-    between = np.log(-np.expm1(-tail * np.log1p(1.0 / lower)))
-    return below_upper + np.where(x == 0.0, 0.0, above_lower + between)
-
-
-def mixture(log_ordinary: FloatArray, log_broad: FloatArray, share: float) -> tuple[FloatArray, FloatArray]:
-    """Log probability of a count that is a one-off with a small probability, and whether it was one.
-
-    Parameters
-    ----------
-    log_ordinary, log_broad : ndarray
-        Log probabilities under the ordinary and the broad law, same shape; finite.
-    share : float
-        Prior probability eps of a one-off, from 0 to below 1.
-
-    Returns
-    -------
-    log_probability : ndarray
-        log((1 - eps) exp(log_ordinary) + eps exp(log_broad)), same shape.
-    one_off : ndarray
-        Posterior probability that the count came from the broad law, same shape.
-
-    Examples
-    --------
-    >>> log_p, one_off = mixture(np.log([0.1]), np.log([0.3]), 0.25)
-    >>> np.exp(log_p).round(6).tolist(), one_off.round(6).tolist()
-    ([0.15], [0.5])
-    """
-    if share == 0.0:
-        return log_ordinary, np.zeros_like(log_ordinary)
-    ordinary = log_ordinary + math.log1p(-share)
-    broad = log_broad + math.log(share)
-    larger = np.maximum(ordinary, broad)
-    log_p = larger + np.log1p(np.exp(np.minimum(ordinary, broad) - larger))
-    return log_p, np.exp(broad - log_p)
-
-
 def effective_dispersion(dispersion: ArrayLike, relative_sd: float) -> FloatArray:
     """Dispersion of a count whose exposure is itself uncertain.
 
@@ -330,27 +256,3 @@ def negative_binomial_cdf(
     # One special function is enough: adding what lies between is exact, and four times faster.
     up_to = np.minimum(below + np.exp(log_negative_binomial(x, m, r)), 1.0)
     return below, up_to
-
-
-def one_off_cdf(count: ArrayLike, mean: ArrayLike, tail: float) -> tuple[FloatArray, FloatArray]:
-    """Distribution function of the broad component below and at a count.
-
-    Parameters
-    ----------
-    count, mean, tail
-        As for `log_one_off`.
-
-    Returns
-    -------
-    below, up_to : ndarray
-        P(X < count) and P(X <= count), broadcast.
-
-    Examples
-    --------
-    >>> [round(float(p), 6) for p in one_off_cdf(1, 0.5, 1.0)]
-    [0.5, 0.75]
-    """
-    x = np.asarray(count, dtype=np.float64)
-    log_m = np.log(np.asarray(mean, dtype=np.float64))
-    below = expit(tail * (np.log(np.maximum(x - 0.5, 0.5)) - log_m))
-    return np.where(x == 0.0, 0.0, below), expit(tail * (np.log(x + 0.5) - log_m))

@@ -8,6 +8,7 @@ from numpy.typing import NDArray
 from detectors.bench import Bench, Likelihood
 from detectors.level_grid import LevelGrid
 from detectors.observation import Observation
+from detectors.posterior import Quantiles
 from detectors.run_slots import RunSlots
 
 FloatArray = NDArray[np.float64]
@@ -70,6 +71,8 @@ class Step:
         Its probability at each node.
     row_mass : ndarray, shape (rows,)
         Posterior probability of each node, pairs weighted.
+    level : Quantiles
+        Quantiles of the level.
     run_mass : ndarray, shape (slots,)
         Posterior probability of each slot.
     slots : RunSlots
@@ -79,5 +82,6 @@ class Step:
     log_predictive: float
     likelihood: Likelihood
     row_mass: FloatArray
+    level: Quantiles
     run_mass: FloatArray
     slots: RunSlots

@@ -64,7 +64,7 @@ def _cropped(state: FilterState) -> FilterState:
     weights = state.weights.astype(np.float32)
     scale = np.ones(state.run_factor.size)
     scale[stale] = state.run_factor[stale]
-    per_row = 1.0 / state.pair_total[state.grid.pair]
+    per_row = state.grid.spread(1.0 / state.pair_total)
     weights *= per_row.astype(np.float32)[:, None]
     if stale.any():
         weights *= scale.astype(np.float32)

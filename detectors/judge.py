@@ -9,7 +9,7 @@ from detectors.errors import UnusableParameter
 from detectors.filter_state import FilterState, Step
 from detectors.gap_prior import GapPrior
 from detectors.posterior import Announcement, Quantiles
-from detectors.summary import level_quantiles
+from detectors.quantiles import level_quantiles
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
@@ -122,12 +122,11 @@ def judge(state: FilterState, step: Step, memory: Memory, rule: Rule) -> Verdict
     -----
     q = P(lasting <= run length <= window, the run is not the first and starts after the last announcement).
     """
-    level = level_quantiles(state.grid, step.row_mass)
     keep = rule.window + 1
     memory = Memory(
         memory.last_announced,
         (*memory.positions, state.position)[-keep:],
-        (*memory.levels, level)[-keep:],
+        (*memory.levels, step.level)[-keep:],
     )
     recent = recent_slots(step, state.counted, memory.last_announced, rule)
     probability = float(min(step.run_mass[recent].sum(), 1.0))
@@ -184,7 +183,7 @@ def _announcement(
     before = memory.levels[len(memory.levels) - 2 - int(ago[best])]
     share = np.exp(state.log_weight) / state.pair_total
     columns = state.weights[:, recent] @ state.run_factor[recent].astype(state.weights.dtype)
-    after = level_quantiles(state.grid, columns * share[state.grid.pair])
+    after = level_quantiles(state.grid, columns * state.grid.spread(share))
     return Announcement(
         position=state.position,
         start_position=int(positions[best]),

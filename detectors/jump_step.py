@@ -12,6 +12,7 @@ from detectors.level_grid import LevelGrid
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
+Map = Callable[[NDArray[np.floating]], NDArray[np.floating]]
 
 FARTHEST_JUMP = 200.0
 """Jumps of the log level beyond this (a factor of e^200) are left out of the normalising sum."""
@@ -24,10 +25,11 @@ class _Group:
     rows: IntArray
     filled: NDArray[np.bool_]
     targets: IntArray
-    matrix: FloatArray
+    spacing: float
+    longest: int
 
 
-def jump_step(jump: JumpPrior | IndependentLevels, grid: LevelGrid) -> Callable[[FloatArray], FloatArray]:
+def jump_step(jump: JumpPrior | IndependentLevels, grid: LevelGrid) -> Map:
     """Build the map from the level weights that shift now to the level weights of the new run.
 
     Parameters
@@ -40,19 +42,19 @@ def jump_step(jump: JumpPrior | IndependentLevels, grid: LevelGrid) -> Callable[
     Returns
     -------
     callable
-        Takes and returns an ndarray of shape (rows,). A jump prior is normalised over all nodes that an
+        Takes and returns an ndarray of shape (rows,), in the precision given. A jump prior is normalised over all nodes that an
         endless grid of the same spacing would have: what lands beyond the grid's ends is lost, as it should
         be, since the grid spans every level at which the newest count is likely.
     """
     if isinstance(jump, IndependentLevels):
         return _independent(jump, grid)
     groups = [_group(jump, grid, float(h)) for h in np.unique(grid.spacing)]
-    return lambda shifting: _apply(groups, shifting)
+    return lambda shifting: _apply(jump, groups, shifting)
 
 
-def _independent(jump: IndependentLevels, grid: LevelGrid) -> Callable[[FloatArray], FloatArray]:
+def _independent(jump: IndependentLevels, grid: LevelGrid) -> Map:
     density = jump.density(grid.log_level) * grid.spacing[grid.pair]
-    return lambda shifting: np.add.reduceat(shifting, grid.start)[grid.pair] * density
+    return lambda shifting: grid.spread(np.add.reduceat(shifting, grid.start)) * density
 
 
 @lru_cache(maxsize=256)
@@ -66,8 +68,8 @@ def jump_weights(jump: JumpPrior, spacing: float, size: int) -> FloatArray:
 
 
 @lru_cache(maxsize=128)
-def _toeplitz(jump: JumpPrior, spacing: float, size: int) -> FloatArray:
-    weights = jump_weights(jump, spacing, size)
+def _toeplitz(jump: JumpPrior, spacing: float, size: int, kind: str) -> NDArray[np.floating]:
+    weights = jump_weights(jump, spacing, size).astype(kind)
     matrix = weights[np.abs(np.arange(size)[:, None] - np.arange(size)[None, :])]
     matrix.flags.writeable = False
     return matrix
@@ -77,16 +79,17 @@ def _group(jump: JumpPrior, grid: LevelGrid, spacing: float) -> _Group:
     members = np.flatnonzero(grid.spacing == spacing)
     sizes = grid.size[members]
     longest = int(sizes.max())
-    matrix = _toeplitz(jump, spacing, -(-longest // 32) * 32)[:longest, :longest]
     places = np.arange(longest)[None, :]
     filled = places < sizes[:, None]
     rows = np.where(filled, grid.start[members][:, None] + places, 0)
-    return _Group(rows, filled, rows[filled], matrix)
+    return _Group(rows, filled, rows[filled], spacing, longest)
 
 
-def _apply(groups: list[_Group], shifting: FloatArray) -> FloatArray:
+def _apply(jump: JumpPrior, groups: list[_Group], shifting: NDArray[np.floating]) -> NDArray[np.floating]:
     landed = np.zeros_like(shifting)
     for group in groups:
-        leaving = np.where(group.filled, shifting[group.rows], 0.0)
-        landed[group.targets] = (leaving @ group.matrix)[group.filled]
+        size = -(-group.longest // 32) * 32
+        matrix = _toeplitz(jump, group.spacing, size, shifting.dtype.str)[: group.longest, : group.longest]
+        leaving = np.where(group.filled, shifting[group.rows], shifting.dtype.type(0))
+        landed[group.targets] = (leaving @ matrix)[group.filled]
     return landed

@@ -58,7 +58,7 @@ class LevelGrid:
     @cached_property
     def log_level(self) -> FloatArray:
         """The log level of each row."""
-        return self.node * self.spacing[self.pair]
+        return self.node * self.spread(self.spacing)
 
     @cached_property
     def ascending(self) -> IntArray:
@@ -79,6 +79,10 @@ class LevelGrid:
     def highest(self) -> FloatArray:
         """Highest log level of each pair."""
         return (self.first + self.size - 1) * self.spacing
+
+    def spread(self, values: FloatArray) -> FloatArray:
+        """One value a pair, repeated for each of its rows."""
+        return np.repeat(values, self.size)
 
     def of_pairs(self, kept: IntArray) -> "LevelGrid":
         """The grids of some of the pairs."""

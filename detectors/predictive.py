@@ -63,11 +63,11 @@ def _along_grid(
     spread = 1.0 + mean / dispersion
     slope = -mean * (1.0 + count / dispersion) / spread * probability
     bend = slope * (1.0 + count - mean) / spread
-    spacing = grid.spacing[grid.pair]
+    spacing = grid.spread(grid.spacing)
     rise = np.zeros_like(mean)
     rise[1:] = spacing[1:] / 2.0 * (slope[:-1] + slope[1:]) + spacing[1:] ** 2 / 12.0 * (bend[:-1] - bend[1:])
     rise[grid.start] = 0.0
     running = np.cumsum(rise)
     _, lowest = negative_binomial_cdf(count, mean[grid.start], dispersion[grid.start])
-    result = running + (lowest - running[grid.start])[grid.pair]
+    result = running + grid.spread(lowest - running[grid.start])
     return np.asarray(np.clip(result, probability, 1.0))

@@ -13,14 +13,12 @@ from detectors.grid_plan import TOLERATED_RISE, covers, first_grid, reference_le
 from detectors.jump_prior import IndependentLevels
 from detectors.model import Model
 from detectors.observation import Observation
+from detectors.quantiles import quantiles_and_reference
 from detectors.run_slots import BLOCK, RunSlots, after_merge, first_slot, merges_due, with_new_run
 from detectors.spacing import LOG_LEVEL_RANGE
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
-
-REFERENCE_QUANTILE = 0.99
-
 
 def first_count(model: Model, observation: Observation) -> tuple[FilterState, Step]:
     """Fold the first count of a stream."""
@@ -74,7 +72,7 @@ def _pairs(model: Model) -> tuple[FloatArray, FloatArray, FloatArray]:
 def _first(model: Model, plan: tuple[Observation, ...], observation: Observation) -> tuple[FilterState, Step]:
     dispersion, wander, log_prior = _pairs(model)
     bench = bench_for(model, dispersion, wander, first_grid(model, dispersion, wander, plan))
-    spacing = bench.grid.spacing[bench.grid.pair]
+    spacing = bench.grid.spread(bench.grid.spacing)
     if isinstance(model.jump, IndependentLevels):
         prior = model.jump.density(bench.grid.log_level) * spacing
     else:
@@ -111,16 +109,16 @@ def _update(state: FilterState, observation: Observation) -> tuple[FilterState, 
     gap = observation.position - state.position
     hazard = _hazard(state, gap)
     likelihood = bench.likelihood(observation)
-    row_factor = likelihood.probability / state.pair_total[bench.grid.pair]
+    row_factor = likelihood.probability / bench.grid.spread(state.pair_total)
     walk = bench.walk(gap)
-    shifting = walk.matrix @ (weights @ (state.run_factor * hazard).astype(weights.dtype)).astype(np.float64)
+    shifting = weights @ (state.run_factor * hazard).astype(weights.dtype)
     moved = walk.scaled(row_factor, weights.dtype) @ weights
     slots, slot = _free_slot(state.slots)
     factor = state.run_factor * (1.0 - hazard)
     if slots.used.size > moved.shape[1]:
         moved = np.concatenate((moved, np.zeros((moved.shape[0], BLOCK), dtype=moved.dtype)), axis=1)
         factor = np.concatenate((factor, np.zeros(BLOCK)))
-    moved[:, slot] = bench.jump(shifting) * row_factor
+    moved[:, slot] = bench.jump(walk.plain(weights.dtype) @ shifting) * row_factor
     factor[slot] = 1.0
     counted = state.counted + 1
     after = replace(
@@ -160,16 +158,22 @@ def _weighed(state: FilterState, likelihood: Likelihood) -> tuple[FilterState, S
     share = np.exp(log_weight) / np.maximum(total, 1e-290)
     run_mass = share @ by_slot
     in_pair = state.weights @ state.run_factor.astype(state.weights.dtype)
-    row_mass = in_pair * share[grid.pair]
-    ascending = np.cumsum(row_mass[grid.ascending])
-    place = int(np.searchsorted(ascending, REFERENCE_QUANTILE * ascending[-1]))
+    row_mass = in_pair * grid.spread(share)
+    level, reference = quantiles_and_reference(grid, row_mass)
     weighed = replace(
         state,
         log_weight=log_weight,
         pair_total=np.maximum(total, 1e-290),
-        reference=state.reference if state.early else float(grid.ascending_log_level[place]),
+        reference=state.reference if state.early else reference,
     )
-    step = Step(float(log_sum) + likelihood.log_scale, likelihood, row_mass, run_mass, state.slots)
+    step = Step(
+        log_predictive=float(log_sum) + likelihood.log_scale,
+        likelihood=likelihood,
+        row_mass=row_mass,
+        level=level,
+        run_mass=run_mass,
+        slots=state.slots,
+    )
     return _merged(weighed, run_mass), step
 
 

@@ -4,37 +4,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detectors.filter_state import FilterState, Step
-from detectors.level_grid import LevelGrid
 from detectors.observation import Observation
-from detectors.posterior import Posterior, Quantiles, RunLengths, Weighted
+from detectors.posterior import Posterior, RunLengths, Weighted
 from detectors.predictive import transform
 
 FloatArray = NDArray[np.float64]
-
-SHARES = np.array([0.05, 0.5, 0.95])
-
-
-def level_quantiles(grid: LevelGrid, row_mass: FloatArray) -> Quantiles:
-    """The 5 %, 50 % and 95 % quantiles of the level from the probability of each node.
-
-    Parameters
-    ----------
-    grid : LevelGrid
-        The grids.
-    row_mass : ndarray, shape (rows,)
-        Weight of each node; it need not sum to 1.
-
-    Returns
-    -------
-    Quantiles
-        In counts per unit of exposure.
-    """
-    mass = row_mass[grid.ascending]
-    running = np.cumsum(mass)
-    middle = (running - 0.5 * mass) / running[-1]
-    low, mid, high = np.exp(np.interp(SHARES, middle, grid.ascending_log_level)).tolist()
-    return Quantiles(low, mid, high)
-
+IntArray = NDArray[np.int64]
 
 def run_lengths(step: Step, counted: int) -> RunLengths:
     """The run-length posterior as groups, shortest first."""
@@ -83,16 +58,16 @@ def posterior(state: FilterState, step: Step, observation: Observation, recent_s
         run_lengths=lengths,
         run_length_mode=most_probable(lengths),
         recent_shift=recent_shift,
-        level=level_quantiles(bench.grid, step.row_mass),
-        dispersion=_marginal(bench.dispersion, weight),
-        wander=_marginal(bench.wander, weight),
+        level=step.level,
+        dispersion=_marginal(bench.dispersions, weight),
+        wander=_marginal(bench.wanders, weight),
         one_off=float(np.clip(step.row_mass @ step.likelihood.one_off_share, 0.0, 1.0)),
         log_predictive=step.log_predictive,
         pit=transform(bench, step, observation),
     )
 
 
-def _marginal(value: FloatArray, weight: FloatArray) -> Weighted:
-    values, place = np.unique(value, return_inverse=True)
-    probability = np.bincount(place, weights=weight)
+def _marginal(grouped: tuple[FloatArray, IntArray], weight: FloatArray) -> Weighted:
+    values, group = grouped
+    probability = np.bincount(group, weights=weight)
     return Weighted(tuple(values.tolist()), tuple((probability / probability.sum()).tolist()))

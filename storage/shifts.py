@@ -45,6 +45,7 @@ class Shift:
     fingerprint: str
     reading_id: int | None
     told_utc: datetime | None = None
+    told_how: str | None = None
     figures: Mapping[str, Any] = field(default_factory=dict)
 
 
@@ -88,10 +89,13 @@ def untold_shifts(conn: Connection, *, limit: int = 1000) -> tuple[Shift, ...]:
     return _shifts(conn, untold.order_by(shifts.c.announced_utc, shifts.c.id).limit(limit))
 
 
-def mark_told(conn: Connection, shift_ids: Sequence[str], *, now: datetime) -> int:
-    """Marks shifts as told, in the transaction that fills the outbox; gives how many were untold."""
+def mark_told(conn: Connection, shift_ids: Sequence[str], *, now: datetime, how: str) -> int:
+    """Marks shifts as told, in the transaction that fills the outbox; gives how many were untold.
+
+    `how` is a plain word for what was done: sent, hushed, no outlet.
+    """
     untold = shifts.c.id.in_(shift_ids) & shifts.c.told_utc.is_(None)
-    return conn.execute(update(shifts).where(untold).values(told_utc=now)).rowcount
+    return conn.execute(update(shifts).where(untold).values(told_utc=now, told_how=how)).rowcount
 
 
 def set_state(conn: Connection, shift_id: str, state: str) -> None:

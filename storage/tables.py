@@ -246,6 +246,7 @@ shifts = Table(
     _name("fingerprint"),
     Column("reading_id", Whole, ForeignKey("readings.id")),
     Column("told_utc", Instant),
+    Column("told_how", Name),
     Column("figures", Document, nullable=False),
     _one_of("origin", "live", "history"),
     _one_of("state", "emerging", "settled", "withdrawn"),

@@ -21,7 +21,8 @@ _SPOILS_TEXT = {0: "\ufffd"} | dict.fromkeys(range(0xD800, 0xE000), "\ufffd")
 
 def whole(value: object) -> int:
     """The value as a Python int: numpy integers are converted, what is not a whole number is refused."""
-    if isinstance(value, bool) or not isinstance(value, SupportsIndex):
+    # The usual type is asked for first, because asking for an ability takes twenty times as long.
+    if type(value) is not int and (isinstance(value, bool) or not isinstance(value, SupportsIndex)):
         raise UnstorableValue("a whole number", value)
     number = operator.index(value)
     if abs(number) > LARGEST_WHOLE:

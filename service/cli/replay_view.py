@@ -5,16 +5,11 @@ from service.cli.sparkline import sparkline
 from service.replay.report import ObservationLine, Report
 from service.replay.words import CAUTION, alert_sentence, level_text, summary_sentence, too_short_sentence
 
-COLUMNS = (
-    "row",
-    "at",
-    "count",
-    "recent shift",
-    "run length",
-    "level (5 to 95 %)",
-    "one-off",
-    "log predictive",
-    "pit",
+COLUMNS = ("row", "at", "count", "shift", "run", "level (5 to 95 %)", "one-off", "log p", "pit")
+LEGEND = (
+    "shift: probability of a recent shift; run: most probable run length, in counts; one-off: probability "
+    "that the count is one; log p: log probability of the count, given those before it; pit: predictive "
+    "distribution function just below and at the count."
 )
 
 
@@ -32,7 +27,15 @@ def show_report(report: Report) -> None:
     say("")
     say(sparkline([line.count for line in report.observations], width(), blocks()))
     say("")
+    say(LEGEND)
+    say("")
     show_table(COLUMNS, [_cells(line) for line in report.observations])
+
+
+def pit_text(pit: tuple[float, float]) -> str:
+    """Both bounds, or one where they are the same to three places."""
+    bounds = dict.fromkeys(f"{bound:.3f}" for bound in pit)
+    return " to ".join(bounds)
 
 
 def _cells(line: ObservationLine) -> list[Cell]:
@@ -45,7 +48,7 @@ def _cells(line: ObservationLine) -> list[Cell]:
         None if line.level is None else level_text(line.level),
         _probability(line.one_off),
         line.log_predictive,
-        None if line.pit is None else " to ".join(f"{bound:.3f}" for bound in line.pit),
+        None if line.pit is None else pit_text(line.pit),
     ]
 
 

@@ -3,6 +3,7 @@
 import datetime
 import os
 import sys
+import textwrap
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 
@@ -13,6 +14,9 @@ from service.cli.sparkline import BLOCKS, PLAIN_BLOCKS
 
 Cell = str | int | float | bool | datetime.date | None
 PLAIN_WIDTH = 100
+NARROWEST = 20
+GAP = 2
+LONGEST_WHOLE = 28
 
 
 def show_json(value: object) -> None:
@@ -71,9 +75,10 @@ def number_text(value: float) -> str:
 
 
 def say(text: str) -> None:
-    """A line for a person; characters that the terminal cannot print are replaced."""
+    """A line for a person: wrapped on a terminal, and what cannot be printed there is replaced."""
     encoding = sys.stdout.encoding or "utf-8"
-    click.echo(text.encode(encoding, "replace").decode(encoding))
+    printable = text.encode(encoding, "replace").decode(encoding)
+    click.echo(textwrap.fill(printable, width()) if _is_long_prose(printable) else printable)
 
 
 def note(text: str) -> None:
@@ -93,9 +98,11 @@ def blocks() -> str:
 def width() -> int:
     """How many characters fit on a line."""
     try:
-        return os.get_terminal_size(sys.stdout.fileno()).columns
+        columns = os.get_terminal_size(sys.stdout.fileno()).columns
     except (OSError, ValueError):
         return PLAIN_WIDTH
+    # Some terminals do not know their size, and say 0.
+    return columns if columns >= NARROWEST else PLAIN_WIDTH
 
 
 @contextmanager
@@ -116,18 +123,25 @@ def progress(title: str, total: int) -> Iterator[Callable[[int], None]]:
 
 
 def _show_rich(columns: Sequence[str], cells: Sequence[Sequence[str]], right: Sequence[bool]) -> None:
-    from rich import box
     from rich.console import Console
     from rich.table import Table
     from rich.text import Text
 
-    table = Table(box=box.SIMPLE_HEAD)
-    for name, to_right in zip(columns, right, strict=True):
-        table.add_column(name, justify="right" if to_right else "left", overflow="fold")
+    needed = [max(map(len, column)) for column in zip(columns, *cells, strict=True)]
+    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0))
+    for name, to_right, length in zip(columns, right, needed, strict=True):
+        whole = length <= LONGEST_WHOLE
+        table.add_column(name, justify="right" if to_right else "left", no_wrap=whole, overflow="fold")
     for row in cells:
         # As Text, so that brackets in a title are not taken for markup.
         table.add_row(*map(Text, row))
-    Console().print(table)
+    # Figures are never folded or cut; on a terminal that is too narrow for them, lines run on.
+    least = sum(min(length, LONGEST_WHOLE) + GAP for length in needed)
+    Console(width=max(width(), least)).print(table)
+
+
+def _is_long_prose(text: str) -> bool:
+    return sys.stdout.isatty() and len(text) > width() and " " in text
 
 
 def _is_number(cell: Cell) -> bool:

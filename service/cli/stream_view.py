@@ -23,17 +23,16 @@ STREAM_COLUMNS = (
 HISTORY_COLUMNS = (
     "at",
     "count",
-    "recent shift",
-    "run length",
-    "most probable run lengths",
+    "shift",
+    "run",
+    "run lengths",
     "level (5 to 95 %)",
     "one-off",
-    "log predictive",
-    "pit",
+    "log p",
 )
 SHIFT_COLUMNS = (
     "shift",
-    "stream",
+    "title",
     "since",
     "noticed at",
     "probability",
@@ -91,7 +90,6 @@ def history_cells(stored: StoredPosterior) -> list[Cell]:
         quantiles_text(stored.level),
         probability_text(stored.one_off),
         stored.log_predictive,
-        " to ".join(f"{bound:.3f}" for bound in stored.pit),
     ]
 
 

@@ -2,10 +2,14 @@
 
 import subprocess
 import sys
+from datetime import date, datetime
 from pathlib import Path
 
+import pytest
+
 from storage.engine import Store, open_store
-from storage.readings import newest_readings
+from storage.errors import StoreUnusable
+from storage.readings import NewReading, keep_readings, newest_readings
 from storage.shifts import untold_shifts
 from storage.streams import find_stream
 
@@ -47,3 +51,19 @@ def test_kill_inside_a_write_transaction(store: Store, place: str, stream: str):
             assert untold_shifts(conn) == ()
         with again.writing() as conn:
             assert conn.exec_driver_sql("PRAGMA integrity_check").scalar() == "ok"
+
+
+def test_a_full_disk_leaves_nothing_half_stored(store: Store, stream: str, now: datetime):
+    def fill():
+        with store.writing() as conn:
+            pages = conn.exec_driver_sql("PRAGMA page_count").scalar()
+            # SQLite's own bound on the file stands in for the disk's.
+            conn.exec_driver_sql(f"PRAGMA max_page_count = {pages + 5}").all()
+            for day in range(50):
+                rows = [NewReading(f"e{day}-{n}", date(2026, 3, 1), n, title="t" * 200) for n in range(200)]
+                keep_readings(conn, stream, rows, now=now)
+
+    with pytest.raises(StoreUnusable, match=r"the disk is full\. Nothing was written"):
+        fill()
+    with store.reading() as conn:
+        assert newest_readings(conn, stream) == ()

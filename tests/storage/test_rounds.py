@@ -14,6 +14,7 @@ from storage.rounds import (
     break_off_unfinished,
     end_round,
     get_round,
+    last_good_round,
     last_good_rounds,
     list_rounds,
     note_counts,
@@ -95,6 +96,8 @@ def test_the_last_good_round_of_each_source(store: Store, now: datetime):
     with store.reading() as conn:
         found = last_good_rounds(conn)
         assert {source: one.id for source, one in found.items()} == {"plays": nothing, "video": good}
+        assert last_good_round(conn, "plays") == found["plays"]
+        assert last_good_round(conn, "mail") is None
 
 
 def test_lists_newest_first_within_a_limit(store: Store, now: datetime):

@@ -62,7 +62,7 @@ def test_what_was_recorded_is_read(store: Store, stream: str, now: datetime):
 def test_the_same_id_is_recorded_once(store: Store, now: datetime):
     with store.writing() as conn:
         assert record_shift(conn, a_shift("s1", now))
-        mark_told(conn, ["s1"], now=now)
+        mark_told(conn, ["s1"], now=now, how="sent")
         assert not record_shift(conn, a_shift("s1", now, probability=0.5))
         assert get_shift(conn, "s1").probability == 0.97
         assert untold_shifts(conn) == ()
@@ -77,10 +77,11 @@ def test_only_live_shifts_wait_to_be_told(store: Store, now: datetime):
         record_shift(conn, a_shift("c", now))
         assert [one.id for one in untold_shifts(conn)] == ["c", "b", "a"]
         assert [one.id for one in untold_shifts(conn, limit=1)] == ["c"]
-        assert mark_told(conn, ["c", "b"], now=now) == 2
-        assert mark_told(conn, ["c", "b", "nobody"], now=now + timedelta(days=1)) == 0
-        assert mark_told(conn, [], now=now) == 0
-        assert get_shift(conn, "c").told_utc == now
+        assert mark_told(conn, ["c", "b"], now=now, how="hushed") == 2
+        assert mark_told(conn, ["c", "b", "nobody"], now=now + timedelta(days=1), how="sent") == 0
+        assert mark_told(conn, [], now=now, how="sent") == 0
+        told = get_shift(conn, "c")
+        assert (told.told_utc, told.told_how) == (now, "hushed")
         assert [one.id for one in untold_shifts(conn)] == ["a"]
 
 
@@ -92,7 +93,7 @@ def test_told_mark_and_outbox_stand_or_fall_together(store: Store, now: datetime
     def tell_and_fail():
         with store.writing() as conn:
             add_delivery(conn, NewDelivery("msg_1", "hook", "s1", b"{}", now, now))
-            mark_told(conn, ["s1"], now=now)
+            mark_told(conn, ["s1"], now=now, how="sent")
             raise RuntimeError
 
     with pytest.raises(RuntimeError):

@@ -23,14 +23,17 @@ def command(given: Given, stream: str, since: At | None, until: At | None, limit
     With --json each count comes with its whole run-length posterior, and those of dispersion and wander.
     """
     from service.cli.history_view import show_history
-    from service.cli.opening import reading, require_stream
+    from service.cli.moments import aware
+    from service.cli.opening import reading, require_stream, zone_of
     from service.cli.show import show_json
     from service.cli.stream_view import history_json
     from storage.posteriors import history
 
+    zone = zone_of(given)
+    first, end = (None if each is None else aware(each, zone) for each in (since, until))
     with reading(given) as conn:
         found = require_stream(conn, stream)
-        stored = history(conn, found.id, since=since, until=until, limit=limit)
+        stored = history(conn, found.id, since=first, until=end, limit=limit)
     if as_json:
         show_json(
             {"stream": found.id, "title": found.title, "history": [history_json(one) for one in stored]}

@@ -258,6 +258,7 @@ def _shifts() -> None:
         sa.Column("fingerprint", TEXT, nullable=False),
         sa.Column("reading_id", WHOLE, nullable=True),
         sa.Column("told_utc", TEXT, nullable=True),
+        sa.Column("told_how", TEXT, nullable=True),
         sa.Column("figures", TEXT, nullable=False),
         sa.CheckConstraint("origin IN ('live', 'history')", name=op.f("ck_shifts_origin")),
         sa.CheckConstraint("state IN ('emerging', 'settled', 'withdrawn')", name=op.f("ck_shifts_state")),

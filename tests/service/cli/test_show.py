@@ -1,10 +1,11 @@
 """Tables for people, when what they are shown on is not a terminal."""
 
 import datetime
+import sys
 
 import pytest
 
-from service.cli.show import cell_text, number_text, plain_lines, show_table
+from service.cli.show import cell_text, number_text, plain_lines, say, show_table
 
 
 @pytest.mark.parametrize(
@@ -54,3 +55,61 @@ def test_a_table_that_is_piped_is_plain_and_whole(capsys: pytest.CaptureFixture[
 def test_an_empty_table_still_has_its_headings(capsys: pytest.CaptureFixture[str]) -> None:
     show_table(("title", "count"), [])
     assert capsys.readouterr().out == "title  count\n"
+
+
+def _pretend_terminal(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Standard output says that it is a terminal (whose size nobody knows, so 100 columns)."""
+    monkeypatch.setenv("TERM", "xterm")
+    for name in ("NO_COLOR", "COLUMNS"):
+        monkeypatch.delenv(name, raising=False)
+    monkeypatch.setattr(sys.stdout, "isatty", lambda: True)
+
+
+def test_on_a_terminal_figures_are_never_broken_however_narrow_it_is(
+    capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    _pretend_terminal(monkeypatch)
+    row = [f"{1000 + place} (900 to 1 234 567)" for place in range(8)]
+    show_table([f"level {place}" for place in range(8)], [row])
+    lines = capsys.readouterr().out.splitlines()
+    assert len(lines) == 2
+    assert all(cell in lines[1] for cell in row)
+    assert "\x1b[1mlevel 0" in lines[0]
+
+
+def test_on_a_terminal_long_texts_are_folded_and_nothing_of_them_is_lost(
+    capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    _pretend_terminal(monkeypatch)
+    show_table(("row", "why"), [[1, "abcdefghij " * 30], [2, "[red]x[/red]"]])
+    out = capsys.readouterr().out
+    assert out.count("abcdefghij") == 30
+    assert "[red]x[/red]" in out
+    assert all(len(line) <= 100 for line in out.splitlines()[1:])
+
+
+def test_on_a_terminal_prose_is_wrapped_between_words(
+    capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    _pretend_terminal(monkeypatch)
+    say("word " * 50)
+    lines = capsys.readouterr().out.splitlines()
+    assert len(lines) == 3
+    assert set(" ".join(lines).split()) == {"word"}
+
+
+def test_what_cannot_be_printed_is_replaced(
+    capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr("service.cli.show.sys", _Ascii())
+    say("caf\u00e9 \u2588")
+    assert capsys.readouterr().out == "caf? ?\n"
+
+
+class _Ascii:
+    class stdout:  # noqa: N801 - stands for sys.stdout
+        encoding = "ascii"
+
+        @staticmethod
+        def isatty() -> bool:
+            return False

@@ -1,0 +1,1 @@
+"""Outlets: where alerts go."""

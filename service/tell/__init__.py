@@ -1,0 +1,1 @@
+"""Tell: put shifts into words and figures, and into the outbox."""
