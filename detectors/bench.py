@@ -9,11 +9,12 @@ import numpy as np
 import scipy.sparse as sparse
 from numpy.typing import NDArray
 
-from detectors.counts import NegativeBinomialRows, effective_dispersion, log_negative_binomial, log_one_off
+from detectors.counts import NegativeBinomialRows, effective_dispersion, log_negative_binomial
 from detectors.jump_step import Map, jump_step
 from detectors.level_grid import LevelGrid
 from detectors.model import Model
 from detectors.observation import Observation
+from detectors.one_off import log_one_off
 from detectors.wander_kernel import walk_matrix
 
 FloatArray = NDArray[np.float64]

@@ -87,10 +87,14 @@ def from_bytes(data: bytes, model: Model) -> Checkpoint:
     (length,) = struct.unpack_from("<I", body)
     facts = json.loads(body[4 : 4 + length])
     memory = Memory(
-        facts["memory"][0], tuple(facts["memory"][1]), tuple(Quantiles(*level) for level in facts["memory"][2])
+        facts["memory"][0],
+        tuple(facts["memory"][1]),
+        tuple(Quantiles(*level) for level in facts["memory"][2]),
     )
     if "early" in facts:
-        return Checkpoint(model, _refolded(model, [Observation(*values) for values in facts["early"]]), memory)
+        return Checkpoint(
+            model, _refolded(model, [Observation(*values) for values in facts["early"]]), memory
+        )
     if "state" in facts:
         return Checkpoint(model, _state(model, facts["state"], body[4 + length :]), memory)
     return Checkpoint(model, None, memory)

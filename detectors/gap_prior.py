@@ -8,18 +8,20 @@ old the run or long the gap.
 
 import math
 from dataclasses import dataclass
-from functools import lru_cache
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from detectors.binomial_sums import (
+    chance_within,
+    first_successes_needed,
+    log_successes,
+    log_sum,
+    successes_needed,
+)
 from detectors.errors import UnusableParameter
 
 FloatArray = NDArray[np.float64]
-IntArray = NDArray[np.int64]
-
-_SMALLEST_TABLE = 1024
-_LARGEST_TABLE = 1 << 19
 
 
 @dataclass(frozen=True, slots=True)
@@ -140,7 +142,9 @@ class GapPrior:
         [0.02938, 0.093843]
         """
         ages = np.asarray(age, dtype=np.int64)
-        still_needed: FloatArray = _rows_at(self, ages, 0) @ _done_within(self, gap)
+        still_needed: FloatArray = successes_needed(self.shape, self.p, ages) @ chance_within(
+            self.shape, self.p, gap
+        )
         return still_needed
 
     def first_shift_within(self, age: ArrayLike, gap: int) -> FloatArray:
@@ -169,7 +173,9 @@ class GapPrior:
         [0.05]
         """
         ages = np.asarray(age, dtype=np.int64)
-        ends: FloatArray = _rows_at(self, ages, 1) @ _done_within(self, gap)
+        ends: FloatArray = first_successes_needed(self.shape, self.p, ages) @ chance_within(
+            self.shape, self.p, gap
+        )
         return ends
 
     def log_survival(self, t: ArrayLike) -> FloatArray:
@@ -193,8 +199,8 @@ class GapPrior:
         lengths = np.asarray(t, dtype=np.int64)
         if self.p == 1.0:
             return np.where(lengths < self.shape, 0.0, -math.inf)
-        log_terms = _log_successes(self, lengths)
-        direct = _log_sum(log_terms[..., : self.shape])
+        log_terms = log_successes(self.shape, self.p, lengths)
+        direct = log_sum(log_terms[..., : self.shape])
         ended = np.exp(log_terms[..., self.shape :]).sum(axis=-1)
         near = 0.0 + np.log1p(-np.minimum(ended, 0.75))
         return np.where(direct > -math.log(2.0), near, direct)
@@ -217,7 +223,8 @@ class GapPrior:
         >>> GapPrior(shape=2, mean=20.0).mean_residual([0, 1000]).round(1).tolist()
         [20.0, 10.1]
         """
-        needed: FloatArray = _rows_at(self, np.asarray(age, dtype=np.int64), 0) @ _needed(self)
+        ages = np.asarray(age, dtype=np.int64)
+        needed: FloatArray = successes_needed(self.shape, self.p, ages) @ _mean_trials(self)
         return needed
 
     def first_mean_residual(self, age: ArrayLike) -> FloatArray:
@@ -238,105 +245,11 @@ class GapPrior:
         >>> GapPrior(shape=2, mean=20.0).first_mean_residual([0]).tolist()
         [15.0]
         """
-        needed: FloatArray = _rows_at(self, np.asarray(age, dtype=np.int64), 1) @ _needed(self)
+        ages = np.asarray(age, dtype=np.int64)
+        needed: FloatArray = first_successes_needed(self.shape, self.p, ages) @ _mean_trials(self)
         return needed
 
 
-def _needed(prior: GapPrior) -> FloatArray:
+def _mean_trials(prior: GapPrior) -> FloatArray:
     """Mean trials until the successes still needed, for 1 .. shape of them."""
     return np.arange(1, prior.shape + 1) / prior.p
-
-
-@lru_cache(maxsize=256)
-def _done_within(prior: GapPrior, gap: int) -> FloatArray:
-    """Chance that a run which still needs 1 .. shape successes has them within the gap, shape (shape,)."""
-    if gap < 1:
-        raise UnusableParameter("gap", gap, "a whole number of at least 1")
-    if prior.p == 1.0:
-        done = np.where(np.arange(1, prior.shape + 1) <= gap, 1.0, 0.0)
-    else:
-        terms = np.exp(_log_successes(prior, np.asarray(gap)))
-        fewer = np.cumsum(terms)[: prior.shape]
-        at_least = np.cumsum(terms[::-1])[::-1][1 : prior.shape + 1]
-        done = np.where(fewer < 0.5, 1.0 - fewer, at_least)
-        done[0] = -math.expm1(gap * math.log1p(-prior.p))
-    done.flags.writeable = False
-    return done
-
-
-def _log_successes(prior: GapPrior, trials: IntArray) -> FloatArray:
-    """log P(i successes in so many trials), i = 0, 1, ... on the last axis, for p below 1.
-
-    It goes so far beyond `shape` that what follows adds nothing to the tail beyond `shape` or less, unless
-    that tail is more than half: the terms fall like exp(-j^2 / (2 (shape + j))) and faster.
-    """
-    had = np.arange(prior.shape + math.ceil(12.0 * math.sqrt(prior.shape)) + 40)
-    left = np.maximum(trials[..., None] - had, 0)
-    ratio = left / (had + 1.0) * (prior.p / (1.0 - prior.p))
-    with np.errstate(divide="ignore"):
-        log_ratio = np.log(ratio)
-    log_terms = np.zeros((*trials.shape, had.size + 1))
-    np.cumsum(log_ratio, axis=-1, out=log_terms[..., 1:])
-    log_terms += trials[..., None] * math.log1p(-prior.p)
-    return log_terms
-
-
-def _log_sum(log_terms: FloatArray) -> FloatArray:
-    largest = log_terms.max(axis=-1)
-    summed: FloatArray = np.log(np.exp(log_terms - largest[..., None]).sum(axis=-1)) + largest
-    return summed
-
-
-def _rows_at(prior: GapPrior, ages: IntArray, kind: int) -> FloatArray:
-    """Distribution of the successes still needed at each age, shape (..., shape); kind 1 is the first run."""
-    if ages.size == 0:
-        return np.empty((*ages.shape, prior.shape))
-    oldest = int(ages.max())
-    if ages.min() < 0:
-        raise UnusableParameter("age", int(ages.min()), "at least 0")
-    size = max(_SMALLEST_TABLE, 1 << oldest.bit_length())
-    if size * prior.shape > _LARGEST_TABLE:
-        return _still_needed(prior, ages)[kind]
-    rows: FloatArray = _table(prior, size)[kind].take(ages, axis=0)
-    return rows
-
-
-@lru_cache(maxsize=16)
-def _table(prior: GapPrior, size: int) -> tuple[FloatArray, FloatArray]:
-    """Distributions of the successes still needed at the ages 0 .. size - 1, for reading only."""
-    tables = _still_needed(prior, np.arange(size))
-    for table in tables:
-        table.flags.writeable = False
-    return tables
-
-
-def _still_needed(prior: GapPrior, ages: IntArray) -> tuple[FloatArray, FloatArray]:
-    """Distribution of the successes still needed, given that the run goes on, ordinary and first run.
-
-    Column m - 1 stands for m successes. An ordinary run of age a has had i = shape - m successes with a
-    probability in proportion to C(a, i) (p / q)^i, and the first run, which needed 1 .. shape of them with
-    equal probability when it was first watched, in proportion to the sum of those up to i.
-    """
-    by_had = _binomial_weights(prior, ages)
-    first = np.cumsum(by_had, axis=-1)
-    return _normalised(by_had[..., ::-1]), _normalised(first[..., ::-1])
-
-
-def _normalised(weights: FloatArray) -> FloatArray:
-    shares: FloatArray = weights / weights.sum(axis=-1, keepdims=True)
-    return np.ascontiguousarray(shares)
-
-
-def _binomial_weights(prior: GapPrior, ages: IntArray) -> FloatArray:
-    """C(a, i) (p / q)^i for i = 0 .. shape - 1, divided by the largest of them, shape (..., shape).
-
-    Products of neighbours' ratios run from the largest term outwards, so none can overflow.
-    """
-    weights = np.ones((*ages.shape, prior.shape))
-    had = np.arange(prior.shape - 1)
-    odds = prior.p / max(1.0 - prior.p, 1e-300)
-    ratio = np.maximum(ages[..., None] - had, 0) / (had + 1.0) * odds
-    weights[..., 1:] = np.cumprod(np.minimum(ratio, 1.0), axis=-1)
-    rising = 1.0 / np.maximum(ratio, 1.0)
-    weights[..., :-1] *= np.cumprod(rising[..., ::-1], axis=-1)[..., ::-1]
-    return weights

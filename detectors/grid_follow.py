@@ -141,5 +141,3 @@ def _moved(state: FilterState, new: LevelGrid, respace: NDArray[np.bool_]) -> Fi
         weights=weights,
         pair_total=np.add.reduceat(weights, new.start, axis=0) @ state.run_factor,
     )
-
-

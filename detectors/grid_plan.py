@@ -66,7 +66,9 @@ def first_grid(
     for observation in counts:
         low, high = count_span(observation, dispersion, REACH_OF_COUNT * far)
         lowest, highest = np.minimum(lowest, low), np.maximum(highest, high)
-    spacing = pair_spacing(model, dispersion, wander, reference_level(counts), max(len(counts), model.accuracy.early))
+    spacing = pair_spacing(
+        model, dispersion, wander, reference_level(counts), max(len(counts), model.accuracy.early)
+    )
     return bounded_grid(spacing, lowest, highest)
 
 

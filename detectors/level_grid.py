@@ -10,7 +10,6 @@ FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
 
-
 @dataclass(frozen=True)
 class LevelGrid:
     """The nodes of every pair: node k of a pair lies at log level (first + k) * spacing.

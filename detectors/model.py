@@ -13,7 +13,15 @@ MODEL_VERSION = 1
 """Raised whenever the same readings and settings would give other posteriors."""
 
 DISPERSIONS = (0.5, 1.0, 2.0, 4.0, 8.0, 16.0, 32.0, 64.0, 128.0, 256.0, 512.0, 1024.0, math.inf)
-WANDERS = ((0.005, 1.0), (0.01, 1.0), (0.02, 0.5), (0.04, 0.25), (0.08, 0.125), (0.16, 0.0625), (0.32, 0.03125))
+WANDERS = (
+    (0.005, 1.0),
+    (0.01, 1.0),
+    (0.02, 0.5),
+    (0.04, 0.25),
+    (0.08, 0.125),
+    (0.16, 0.0625),
+    (0.32, 0.03125),
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -57,4 +65,6 @@ class Model:
         if not self.dispersions or any(not r > 0.0 for r in self.dispersions):
             raise UnusableParameter("dispersions", self.dispersions, "one or more numbers above 0")
         if not self.wanders or any(not (0.0 <= w <= 1.0 and weight > 0.0) for w, weight in self.wanders):
-            raise UnusableParameter("wanders", self.wanders, "one or more (value from 0 to 1, weight above 0)")
+            raise UnusableParameter(
+                "wanders", self.wanders, "one or more (value from 0 to 1, weight above 0)"
+            )

@@ -40,8 +40,8 @@ def log_one_off(count: ArrayLike, mean: ArrayLike, tail: float) -> FloatArray:
     x = np.asarray(count, dtype=np.float64)
     m = np.asarray(mean, dtype=np.float64)
     if tail == 1.0:
-        beyond_lower = np.where(x == 0.0, m, m + (x - 0.5))
-        log_share: FloatArray = np.log(m / beyond_lower / (m + (x + 0.5)) * np.where(x == 0.0, 0.5, 1.0))
+        between_edges = np.where(x == 0.0, 0.5 / (m + 0.5), m / (m + (x - 0.5)) / (m + (x + 0.5)))
+        log_share: FloatArray = np.log(between_edges)
         return log_share
     log_m = np.log(m)
     below_upper = -np.logaddexp(0.0, tail * (log_m - np.log(x + 0.5)))
@@ -70,9 +70,15 @@ def one_off_cdf(count: ArrayLike, mean: ArrayLike, tail: float) -> tuple[FloatAr
     [0.5, 0.75]
     """
     x = np.asarray(count, dtype=np.float64)
-    log_m = np.log(np.asarray(mean, dtype=np.float64))
-    below = expit(tail * (np.log(np.maximum(x - 0.5, 0.5)) - log_m))
-    return np.where(x == 0.0, 0.0, below), expit(tail * (np.log(x + 0.5) - log_m))
+    m = np.asarray(mean, dtype=np.float64)
+    # Below a count of 0 there is nothing; at an edge of 0 both forms give exactly that.
+    lower, upper = np.maximum(x - 0.5, 0.0), x + 0.5
+    if tail == 1.0:
+        return lower / (lower + m), upper / (upper + m)
+    log_m = np.log(m)
+    with np.errstate(divide="ignore"):
+        below = expit(tail * (np.log(lower) - log_m))
+    return below, expit(tail * (np.log(upper) - log_m))
 
 
 def mixture(log_ordinary: FloatArray, log_broad: FloatArray, share: float) -> tuple[FloatArray, FloatArray]:

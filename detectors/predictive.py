@@ -4,9 +4,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from detectors.bench import Bench
-from detectors.counts import effective_dispersion, negative_binomial_cdf, one_off_cdf
+from detectors.counts import effective_dispersion, negative_binomial_cdf
 from detectors.filter_state import Step
 from detectors.observation import Observation
+from detectors.one_off import one_off_cdf
 
 FloatArray = NDArray[np.float64]
 

@@ -66,7 +66,9 @@ def respaced(block: FloatArray, old_level: FloatArray, new_level: FloatArray) ->
     interpolated = _cubic(ratio, (new_level - old_level[0]) / spacing)
     result = np.maximum(interpolated * _reference(new_level, mean, variance), 0.0)
     reached = result.sum(axis=0)
-    return (result * np.where(reached > 0.0, totals / np.where(reached > 0.0, reached, 1.0), 0.0)).astype(block.dtype)
+    return (result * np.where(reached > 0.0, totals / np.where(reached > 0.0, reached, 1.0), 0.0)).astype(
+        block.dtype
+    )
 
 
 def _reference(level: FloatArray, mean: FloatArray, variance: FloatArray) -> FloatArray:

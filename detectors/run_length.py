@@ -20,6 +20,7 @@ from detectors.spacing import LOG_LEVEL_RANGE
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
+
 def first_count(model: Model, observation: Observation) -> tuple[FilterState, Step]:
     """Fold the first count of a stream."""
     return _first(model, (observation,), observation)
@@ -53,7 +54,9 @@ def _refolded(state: FilterState, observation: Observation) -> FilterState:
     """While counts are few: lay the grids anew for all of them and fold them again, if they do not suit."""
     model, counts = state.bench.model, (*state.early, observation)
     risen = reference_level(counts) > state.reference + TOLERATED_RISE
-    if not risen and bool(covers(state.grid, observation, state.bench.dispersion, model.accuracy.reach).all()):
+    if not risen and bool(
+        covers(state.grid, observation, state.bench.dispersion, model.accuracy.reach).all()
+    ):
         return state
     folded, _ = _first(model, counts, state.early[0])
     for earlier in state.early[1:]:

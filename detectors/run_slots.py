@@ -73,7 +73,10 @@ def merges_due(slots: RunSlots, counted: int, accuracy: Accuracy) -> list[tuple[
         return []
     order = slots.by_age()
     youngest = counted - slots.newest[order] + 1
-    order, youngest = order[youngest > accuracy.exact_run_length], youngest[youngest > accuracy.exact_run_length]
+    order, youngest = (
+        order[youngest > accuracy.exact_run_length],
+        youngest[youngest > accuracy.exact_run_length],
+    )
     if order.size < 2:
         return []
     span = slots.newest[order[:-1]] - slots.oldest[order[1:]] + 1

@@ -11,6 +11,7 @@ from detectors.predictive import transform
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
+
 def run_lengths(step: Step, counted: int) -> RunLengths:
     """The run-length posterior as groups, shortest first."""
     used = np.flatnonzero(step.slots.used)

@@ -7,15 +7,10 @@ from typing import Protocol
 
 
 class Kind(StrEnum):
-    """What came of an attempt.
-
-    `REFUSED` is a failure that people must mend (a wrong address, a wrong password): it is tried again, with
-    long waits. `ENDED` is the receiver's last word.
-    """
+    """What came of an attempt. `ENDED` is the receiver's last word: it wants no more."""
 
     DELIVERED = "delivered"
     TRY_LATER = "try later"
-    REFUSED = "refused"
     ENDED = "ended"
 
 
@@ -30,7 +25,7 @@ class Outcome:
 
 
 class Outlet(Protocol):
-    """A place to which alerts go. `attempt_seconds` is the most that one attempt may take."""
+    """A place to which alerts go."""
 
     @property
     def name(self) -> str:

@@ -3,12 +3,17 @@
 import json
 import secrets
 from dataclasses import dataclass
-from datetime import UTC, datetime
+from datetime import UTC
 
+from service.clock import Clock
 from service.outlets.outlet import Kind, Outcome, Outlet
 
 TRIAL_TYPE = "trial"
-SENTENCE = "This is a trial of an outlet: nothing has moved, and nothing needs doing."
+SENTENCE = (
+    "This is a trial: nothing has moved, and nothing needs doing. An alert would read like this, with figures "
+    "that are invented here: Example Show: the filtered level fell by about 40 %, from about 1,050 to about "
+    "640 counts per week, most probably from 2026-03-02."
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -21,22 +26,21 @@ class Tried:
     sentence: str
 
 
-def try_outlet(outlet: Outlet, now: datetime) -> Tried:
+def try_outlet(outlet: Outlet, clock: Clock) -> Tried:
     """Send one marked trial. Nothing is stored and nothing is tried again."""
     delivery_id = f"trial_{secrets.token_hex(12)}"
-    outcome = outlet.send(delivery_id, trial_body(outlet.name, now), now)
-    return Tried(outlet.name, outcome.kind is Kind.DELIVERED, outcome.status, _sentence(outlet.name, outcome))
-
-
-def trial_body(outlet: str, now: datetime) -> bytes:
-    """The bytes of a trial, in the envelope of an alert."""
+    now = clock.now()
     document = {
         "type": TRIAL_TYPE,
-        "schema_version": 1,
-        "timestamp": now.astimezone(UTC).isoformat().replace("+00:00", "Z"),
-        "data": {"sentence": SENTENCE, "outlet": outlet},
+        "schema": 1,
+        "id": delivery_id,
+        "composed": now.astimezone(UTC).isoformat().replace("+00:00", "Z"),
+        "outlet": outlet.name,
+        "sentence": SENTENCE,
     }
-    return json.dumps(document, sort_keys=True, ensure_ascii=False).encode("utf-8", "replace")
+    body = json.dumps(document, sort_keys=True, ensure_ascii=False).encode("utf-8", "replace")
+    outcome = outlet.send(delivery_id, body, now)
+    return Tried(outlet.name, outcome.kind is Kind.DELIVERED, outcome.status, _sentence(outlet.name, outcome))
 
 
 def _sentence(name: str, outcome: Outcome) -> str:

@@ -1,14 +1,15 @@
 """Stores what a document said, all of it in one short transaction, before anything computes on it."""
 
 import datetime
+from collections.abc import Iterable
 from dataclasses import dataclass
 
 from sqlalchemy import Connection
 
-from service.round.keys import Sorted, sort_rows
-from service.round.plans import CalendarShape, RoundPlan, StreamPlan
+from service.round.keys import Sorted, ready_utc, sort_rows
+from service.round.plans import CalendarShape, ReleaseShape, RoundPlan, StreamPlan
 from service.sources.document import Document, KeptOut, Validators
-from storage.readings import keep_readings
+from storage.readings import keep_readings, newest_readings
 from storage.ripe import note_ripe
 from storage.rounds import KeptOutRow, RoundCounts, note_counts
 from storage.streams import SeenStream, see_streams
@@ -34,6 +35,14 @@ def keep(
     note_counts(conn, round_id, counts)
     keep_validators(conn, plan.name, _stored(document.validators), now=now)
     return KeptDocument(counts, new)
+
+
+def keep_unchanged(conn: Connection, streams: Iterable[StreamPlan], *, now: datetime.datetime) -> None:
+    """A document that is still the one we have says again what it said: releases ripen by it too."""
+    for stream in streams:
+        if isinstance(stream.shape, ReleaseShape):
+            counted = [one for one in newest_readings(conn, stream.id) if one.count is not None]
+            note_ripe(conn, stream.id, [one.key for one in counted if now >= ready_utc(stream.shape, one.at)])
 
 
 def _keep_rows(

@@ -51,7 +51,9 @@ def key_of_row(row: Row, stream: StreamPlan) -> str:
     return row.release if row.release is not None else row.at.isoformat()
 
 
-def ready_utc(shape: CalendarShape | ReleaseShape, at: datetime.date | datetime.datetime) -> datetime.datetime:
+def ready_utc(
+    shape: CalendarShape | ReleaseShape, at: datetime.date | datetime.datetime
+) -> datetime.datetime:
     """The instant from which a count can be complete: its interval over, or its release at its final age."""
     if isinstance(shape, CalendarShape):
         return end_of(shape.axis, position_of(shape.axis, at)) + shape.settling

@@ -76,7 +76,11 @@ def observe(
 
 
 def _calendar(
-    plan: StreamPlan, shape: CalendarShape, readings: Sequence[Reading], now: datetime.datetime, reaches: At | None
+    plan: StreamPlan,
+    shape: CalendarShape,
+    readings: Sequence[Reading],
+    now: datetime.datetime,
+    reaches: At | None,
 ) -> Observed:
     axis = shape.axis
     by_position = {position_of(axis, reading.at): reading for reading in readings}
@@ -116,7 +120,8 @@ def _releases(shape: ReleaseShape, stored: Stored, now: datetime.datetime) -> Ob
     out = [ripe.get(reading.key, reading) for reading in ordered if ready_utc(shape, reading.at) <= now]
     observations = [_release_observation(place, reading, ripe) for place, reading in enumerate(out)]
     places = [
-        Place(reading.key, reading.at, reading.title, reading.id, ready_utc(shape, reading.at)) for reading in out
+        Place(reading.key, reading.at, reading.title, reading.id, ready_utc(shape, reading.at))
+        for reading in out
     ]
     return _observed(observations, places, len(ordered) - len(out))
 

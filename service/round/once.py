@@ -8,7 +8,8 @@ from dataclasses import dataclass
 from service.clock import Clock
 from service.logs import log
 from service.round.fold import Brought, Timing, bring_up
-from service.round.keep import keep
+from service.round.keep import keep, keep_unchanged
+from service.round.lateness import late_before
 from service.round.plans import RoundPlan, StreamPlan
 from service.sources.document import Document, Validators
 from service.sources.errors import SourceUnreadable
@@ -16,12 +17,12 @@ from service.sources.open_source import Tools, read_document
 from service.sources.plans import fingerprint
 from storage.engine import Store
 from storage.readings import newest_at
-from storage.rounds import FAILED, GOOD, NOTHING_NEW, begin_round, end_round, last_good_rounds
+from storage.rounds import FAILED, GOOD, NOTHING_NEW, begin_round, end_round, list_rounds
 from storage.shifts import Shift
 from storage.streams import list_streams
 from storage.validators import find_validators
 
-LATE_AFTER_ROUNDS = 2
+ROUNDS_LOOKED_AT = 50
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,10 +44,14 @@ def read_and_keep(store: Store, plan: RoundPlan, clock: Clock) -> RoundOutcome:
         outcome = RoundOutcome(round_id, FAILED, str(error))
     except Exception as error:  # A round must not end the daemon; the record says what happened.
         log.exception("round failed", source=plan.name, round=round_id)
-        outcome = RoundOutcome(round_id, FAILED, f"Unexpected {type(error).__name__}; the log has the details.")
+        outcome = RoundOutcome(
+            round_id, FAILED, f"Unexpected {type(error).__name__}; the log has the details."
+        )
     with store.writing() as conn:
         end_round(conn, round_id, outcome.outcome, now=clock.now(), message=outcome.message)
-    log.info("round ended", source=plan.name, round=round_id, outcome=outcome.outcome, message=outcome.message)
+    log.info(
+        "round ended", source=plan.name, round=round_id, outcome=outcome.outcome, message=outcome.message
+    )
     return outcome
 
 
@@ -75,10 +80,13 @@ def _read_and_keep(store: Store, plan: RoundPlan, clock: Clock, round_id: int) -
         known = find_validators(conn, plan.name, about=fingerprint(plan.source))
     validators = Validators(known.etag, known.last_modified, known.about) if known else Validators()
     document: Document = read_document(plan.source, validators, tools=Tools(clock.monotonic))
+    now = clock.now()
     if document.not_modified:
+        with store.writing() as conn:
+            keep_unchanged(conn, _streams(store, plan), now=now)
         return RoundOutcome(round_id, NOTHING_NEW, "The source says that its document is unchanged.")
     with store.writing() as conn:
-        kept = keep(conn, plan, document, round_id=round_id, now=clock.now())
+        kept = keep(conn, plan, document, round_id=round_id, now=now)
     return RoundOutcome(round_id, GOOD if kept.counts.stored else NOTHING_NEW)
 
 
@@ -93,12 +101,12 @@ def _streams(store: Store, plan: RoundPlan) -> tuple[StreamPlan, ...]:
 def _timing(store: Store, plan: RoundPlan, now: datetime.datetime) -> Timing:
     with store.reading() as conn:
         reaches = newest_at(conn, plan.name)
-        good = previous_good_round(conn, plan.name)
-    limit = plan.every * LATE_AFTER_ROUNDS
-    down = good is not None and now - good > limit
-    return Timing(reaches, now - limit if down else None)
+        rounds = list_rounds(conn, source=plan.name, limit=ROUNDS_LOOKED_AT)
+    return Timing(reaches, late_before(rounds, plan.every, now))
 
 
 def _log_shifts(shifts: Iterable[Shift]) -> None:
     for shift in shifts:
-        log.info("shift recorded", stream=shift.stream_id, shift=shift.id, origin=shift.origin, late=shift.late)
+        log.info(
+            "shift recorded", stream=shift.stream_id, shift=shift.id, origin=shift.origin, late=shift.late
+        )

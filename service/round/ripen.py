@@ -16,7 +16,9 @@ def repoint(conn: Connection, stream_id: str, shape: ReleaseShape) -> None:
     for reading in all_readings(conn, stream_id):
         if reading.count is not None:
             by_key[reading.key].append(reading)
-    point_ripe(conn, stream_id, {key: chosen.id for key, read in by_key.items() if (chosen := _at_age(read, shape))})
+    point_ripe(
+        conn, stream_id, {key: chosen.id for key, read in by_key.items() if (chosen := _at_age(read, shape))}
+    )
 
 
 def _at_age(readings: list[Reading], shape: ReleaseShape) -> Reading | None:

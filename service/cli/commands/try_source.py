@@ -19,9 +19,9 @@ def command(given: Given, name: str, limit: int, as_json: bool) -> None:
     from service.cli.source_view import document_json, show_document
     from service.sources.document import Validators
     from service.sources.open_source import Tools, read_document
-    from service.wiring import source_plan
+    from service.wiring import source_named
 
-    document = read_document(source_plan(given.settings, name), Validators(), tools=Tools(monotonic))
+    document = read_document(source_named(given.settings, name), Validators(), tools=Tools(monotonic))
     if as_json:
         show_json(document_json(name, document))
     else:

@@ -1,8 +1,6 @@
 """Signatures against the vectors of the Standard Webhooks specification."""
 
 import base64
-import hashlib
-import hmac
 from datetime import UTC, datetime, timedelta, timezone
 
 import pytest
@@ -31,7 +29,7 @@ def test_the_vector_of_the_specification():
 
 
 def test_the_minified_example_of_the_specification():
-    # Payload, id and timestamp: Standard Webhooks 1.0.0, "signature scheme"; the signature recomputed with hmac.
+    # Payload, id and timestamp: Standard Webhooks 1.0.0, its example; signature recomputed with hmac.
     body = (
         b'{"type":"contact.created","timestamp":"2022-11-03T20:26:10.344522Z",'
         b'"data":{"id":"1f81eb52-5198-4599-803e-771906343485"}}'
@@ -43,9 +41,6 @@ def test_the_minified_example_of_the_specification():
 def test_the_key_is_what_stands_behind_the_prefix():
     key = bytes(range(1, 26))
     assert key_of("whsec_" + base64.b64encode(key).decode()) == key
-    # RFC 4231, test case 4.
-    digest = hmac.new(key, b"\xcd" * 50, hashlib.sha256).hexdigest()
-    assert digest == "82558a389a443c0ea4cc819899f2083a85f0faa3e578f8077a2e3ff46729665b"
 
 
 def test_the_time_is_utc_whatever_the_zone_and_never_rounded_up():

@@ -71,15 +71,13 @@ def test_a_connection_that_is_dropped_is_tried_later_and_once_at_a_time(receiver
     assert len(receiver.received) == 1
 
 
-@pytest.mark.parametrize(
-    "address", ["http://127.0.0.1:1/alerts", "http://nowhere.invalid/alerts", "ftp://x/"]
-)
+@pytest.mark.parametrize("address", ["http://127.0.0.1:1/alerts", "ftp://127.0.0.1/", "127.0.0.1"])
 def test_no_sentence_and_no_repr_holds_the_address_or_the_secret(address: str, clock):
     outlet = hook(address)
     outcome = outlet.send("msg_1", BODY, clock.now())
     assert outcome.kind is Kind.TRY_LATER
     for text in (outcome.error, repr(outcome), repr(outlet), str(outlet)):
-        assert not any(part in text for part in (TOKEN, "127.0.0.1", "nowhere", SECRET[6:]))
+        assert not any(part in text for part in (TOKEN, "127.0.0.1", SECRET[6:]))
 
 
 def test_a_trial_says_that_it_is_one(receiver):
