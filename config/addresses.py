@@ -70,7 +70,7 @@ def _in_folder(address: str, around: Surroundings) -> str:
         return address
     if not name or name.startswith((":memory:", "?")):
         raise unusable("an address without a file", f'a file behind {_SQLITE}, such as "{_SQLITE}counts.sqlite"')
-    return name if name.startswith("file:") else f"{_SQLITE}{around.folder / name}"
+    return address if name.startswith("file:") else f"{_SQLITE}{around.folder / name}"
 
 
 def _signing(raw: Any, info: ValidationInfo) -> Secret:

@@ -1,8 +1,8 @@
 """The negative binomial: probability of a count, its distribution function, an uncertain exposure.
 
 It is evaluated in saddle-point form (Loader 2000): a term that depends on the count and the dispersion only,
-less a deviance that is the sum of two terms of at least 0. Differences of log gamma functions would lose seven
-digits at counts of a billion.
+less a deviance that is the sum of two terms of at least 0. Differences of log gamma functions would lose
+seven digits at counts of a billion.
 """
 
 import math

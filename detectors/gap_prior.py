@@ -142,10 +142,9 @@ class GapPrior:
         [0.02938, 0.093843]
         """
         ages = np.asarray(age, dtype=np.int64)
-        still_needed: FloatArray = successes_needed(self.shape, self.p, ages) @ chance_within(
-            self.shape, self.p, gap
-        )
-        return still_needed
+        needed = successes_needed(self.shape, self.p, ages)
+        ends: FloatArray = needed @ chance_within(self.shape, self.p, gap)
+        return ends
 
     def first_shift_within(self, age: ArrayLike, gap: int) -> FloatArray:
         """Chance that the first run ends within the next gap.
@@ -173,9 +172,8 @@ class GapPrior:
         [0.05]
         """
         ages = np.asarray(age, dtype=np.int64)
-        ends: FloatArray = first_successes_needed(self.shape, self.p, ages) @ chance_within(
-            self.shape, self.p, gap
-        )
+        needed = first_successes_needed(self.shape, self.p, ages)
+        ends: FloatArray = needed @ chance_within(self.shape, self.p, gap)
         return ends
 
     def log_survival(self, t: ArrayLike) -> FloatArray:

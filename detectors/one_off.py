@@ -1,4 +1,4 @@
-"""Probabilities of a one-off count: a broad law, heavy on both sides of the level, and the mixture with it."""
+"""Probabilities of a one-off count: a broad law, heavy on both sides of the level, and its mixture."""
 
 import math
 
@@ -40,8 +40,7 @@ def log_one_off(count: ArrayLike, mean: ArrayLike, tail: float) -> FloatArray:
     x = np.asarray(count, dtype=np.float64)
     m = np.asarray(mean, dtype=np.float64)
     if tail == 1.0:
-        between_edges = np.where(x == 0.0, 0.5 / (m + 0.5), m / (m + (x - 0.5)) / (m + (x + 0.5)))
-        log_share: FloatArray = np.log(between_edges)
+        log_share: FloatArray = np.log(_closed_form(x, m))
         return log_share
     log_m = np.log(m)
     below_upper = -np.logaddexp(0.0, tail * (log_m - np.log(x + 0.5)))
@@ -49,6 +48,36 @@ def log_one_off(count: ArrayLike, mean: ArrayLike, tail: float) -> FloatArray:
     above_lower = -np.logaddexp(0.0, tail * (np.log(lower) - log_m))
     between = np.log(-np.expm1(-tail * np.log1p(1.0 / lower)))
     return below_upper + np.where(x == 0.0, 0.0, above_lower + between)
+
+
+def one_off_probability(count: ArrayLike, mean: ArrayLike, tail: float) -> FloatArray:
+    """Probability of counts under the broad component; at tail 1 without a logarithm.
+
+    Parameters
+    ----------
+    count, mean, tail
+        As for `log_one_off`.
+
+    Returns
+    -------
+    ndarray
+        Probabilities; `count` and `mean` are broadcast against each other.
+
+    Examples
+    --------
+    >>> one_off_probability([0, 1, 2], 0.5, 1.0).round(6).tolist()
+    [0.5, 0.25, 0.083333]
+    """
+    if tail == 1.0:
+        return _closed_form(np.asarray(count, dtype=np.float64), np.asarray(mean, dtype=np.float64))
+    return np.exp(log_one_off(count, mean, tail))
+
+
+def _closed_form(x: FloatArray, m: FloatArray) -> FloatArray:
+    """m w / ((m + lower) (m + upper)) with w the width between the edges, a half at a count of 0."""
+    width = np.where(x == 0.0, 0.5, 1.0)
+    share: FloatArray = m / (m + np.maximum(x - 0.5, 0.0)) * (width / (m + (x + 0.5)))
+    return share
 
 
 def one_off_cdf(count: ArrayLike, mean: ArrayLike, tail: float) -> tuple[FloatArray, FloatArray]:

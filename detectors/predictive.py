@@ -2,9 +2,10 @@
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy import special
 
 from detectors.bench import Bench
-from detectors.counts import effective_dispersion, negative_binomial_cdf
+from detectors.counts import effective_dispersion
 from detectors.filter_state import Step
 from detectors.observation import Observation
 from detectors.one_off import one_off_cdf
@@ -60,7 +61,9 @@ def _along_grid(
 ) -> FloatArray:
     """P(X <= count) at each row, by Hermite's rule from the exact value at each pair's lowest node."""
     grid = bench.grid
-    dispersion = effective_dispersion(bench.row_dispersion, observation.relative_sd)
+    dispersion = bench.row_dispersion
+    if observation.relative_sd > 0.0:
+        dispersion = effective_dispersion(dispersion, observation.relative_sd)
     spread = 1.0 + mean / dispersion
     slope = -mean * (1.0 + count / dispersion) / spread * probability
     bend = slope * (1.0 + count - mean) / spread
@@ -69,6 +72,14 @@ def _along_grid(
     rise[1:] = spacing[1:] / 2.0 * (slope[:-1] + slope[1:]) + spacing[1:] ** 2 / 12.0 * (bend[:-1] - bend[1:])
     rise[grid.start] = 0.0
     running = np.cumsum(rise)
-    _, lowest = negative_binomial_cdf(count, mean[grid.start], dispersion[grid.start])
+    lowest = _up_to(count, mean[grid.start], dispersion[grid.start])
     result = running + grid.spread(lowest - running[grid.start])
     return np.asarray(np.clip(result, probability, 1.0))
+
+
+def _up_to(count: int, mean: FloatArray, dispersion: FloatArray) -> FloatArray:
+    """P(X <= count) for a few means, straight from the special functions."""
+    poisson = np.isinf(dispersion)
+    finite = np.where(poisson, 1.0, dispersion)
+    share = special.betainc(finite, count + 1.0, finite / (finite + mean))
+    return np.where(poisson, special.gammaincc(count + 1.0, mean), share) if poisson.any() else share

@@ -1,8 +1,8 @@
 """What an answer over HTTP means for a delivery. Pure.
 
-Only 2xx is success, and 410 ends a delivery at once. Everything else is tried again on one schedule: a 404 may
-be a receiver that is being set up anew, a 401 or a redirect a mistake in the settings, and people mend those;
-an alert that was given up at the first such answer would be lost to them.
+Only 2xx is success. 410 ends the delivery at once. Redirects are not followed. Other answers of the 4xx kind
+mean that people must mend something, so the delivery is tried again with long waits, and so are redirects;
+408, 425 and 429 only ask for another time, as all of 5xx does.
 """
 
 from collections.abc import Mapping
@@ -12,6 +12,7 @@ from service.outlets.outlet import Kind, Outcome
 from service.outlets.retry_after import retry_after_seconds
 
 GONE = 410
+ASK_FOR_ANOTHER_TIME = frozenset({408, 425, 429})
 SENTENCES = {
     400: "it does not understand the alert",
     401: "it asks for a password or a token",
@@ -41,7 +42,11 @@ def kind_of(status: int) -> Kind:
     """Whether a status is success, a reason to try again, or the end."""
     if 200 <= status < 300:
         return Kind.DELIVERED
-    return Kind.ENDED if status == GONE else Kind.TRY_LATER
+    if status == GONE:
+        return Kind.ENDED
+    if 300 <= status < 500 and status not in ASK_FOR_ANOTHER_TIME:
+        return Kind.REFUSED
+    return Kind.TRY_LATER
 
 
 def _meaning(status: int) -> str:

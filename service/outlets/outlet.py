@@ -7,10 +7,15 @@ from typing import Protocol
 
 
 class Kind(StrEnum):
-    """What came of an attempt. `ENDED` is the receiver's last word: it wants no more."""
+    """What came of an attempt.
+
+    `REFUSED` is a failure that people must mend (a wrong address, a wrong password): it is tried again, with
+    long waits. `ENDED` is the receiver's last word.
+    """
 
     DELIVERED = "delivered"
     TRY_LATER = "try later"
+    REFUSED = "refused"
     ENDED = "ended"
 
 
@@ -25,7 +30,7 @@ class Outcome:
 
 
 class Outlet(Protocol):
-    """A place to which alerts go."""
+    """A place to which alerts go. `attempt_seconds` is the most that one attempt may take."""
 
     @property
     def name(self) -> str:

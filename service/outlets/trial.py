@@ -3,17 +3,12 @@
 import json
 import secrets
 from dataclasses import dataclass
-from datetime import UTC
+from datetime import UTC, datetime
 
-from service.clock import Clock
 from service.outlets.outlet import Kind, Outcome, Outlet
 
 TRIAL_TYPE = "trial"
-SENTENCE = (
-    "This is a trial: nothing has moved, and nothing needs doing. An alert would read like this, with figures "
-    "that are invented here: Example Show: the filtered level fell by about 40 %, from about 1,050 to about "
-    "640 counts per week, most probably from 2026-03-02."
-)
+SENTENCE = "This is a trial of an outlet: nothing has moved, and nothing needs doing."
 
 
 @dataclass(frozen=True, slots=True)
@@ -26,21 +21,22 @@ class Tried:
     sentence: str
 
 
-def try_outlet(outlet: Outlet, clock: Clock) -> Tried:
+def try_outlet(outlet: Outlet, now: datetime) -> Tried:
     """Send one marked trial. Nothing is stored and nothing is tried again."""
     delivery_id = f"trial_{secrets.token_hex(12)}"
-    now = clock.now()
+    outcome = outlet.send(delivery_id, trial_body(outlet.name, now), now)
+    return Tried(outlet.name, outcome.kind is Kind.DELIVERED, outcome.status, _sentence(outlet.name, outcome))
+
+
+def trial_body(outlet: str, now: datetime) -> bytes:
+    """The bytes of a trial, in the envelope of an alert."""
     document = {
         "type": TRIAL_TYPE,
-        "schema": 1,
-        "id": delivery_id,
-        "composed": now.astimezone(UTC).isoformat().replace("+00:00", "Z"),
-        "outlet": outlet.name,
-        "sentence": SENTENCE,
+        "schema_version": 1,
+        "timestamp": now.astimezone(UTC).isoformat().replace("+00:00", "Z"),
+        "data": {"sentence": SENTENCE, "outlet": outlet},
     }
-    body = json.dumps(document, sort_keys=True, ensure_ascii=False).encode("utf-8", "replace")
-    outcome = outlet.send(delivery_id, body, now)
-    return Tried(outlet.name, outcome.kind is Kind.DELIVERED, outcome.status, _sentence(outlet.name, outcome))
+    return json.dumps(document, sort_keys=True, ensure_ascii=False).encode("utf-8", "replace")
 
 
 def _sentence(name: str, outcome: Outcome) -> str:

@@ -1,4 +1,4 @@
-"""The one-off component and its mixture with the ordinary law, against their definitions in 60-digit arithmetic."""
+"""The one-off component and its mixture with the ordinary law, against 60-digit arithmetic."""
 
 import math
 
@@ -9,7 +9,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from detectors.counts import log_negative_binomial
-from detectors.one_off import log_one_off, mixture, one_off_cdf
+from detectors.one_off import log_one_off, mixture, one_off_cdf, one_off_probability
 
 
 @pytest.mark.parametrize("tail", [1.0, 0.5, 2.5])
@@ -33,6 +33,9 @@ def test_one_off_against_its_definition(count: int, tail: float, level: float) -
         exact = mpmath.log(upper - lower)
         error = abs(mpmath.mpf(float(log_one_off(count, level, tail))) - exact)
         assert error <= 1e-13 * max(1, abs(exact))
+        assert float(one_off_probability(count, level, tail)) == pytest.approx(
+            float(upper - lower), rel=1e-12
+        )
         below, up_to = one_off_cdf(count, level, tail)
         assert float(below) == pytest.approx(float(lower), rel=1e-13)
         assert float(up_to) == pytest.approx(float(upper), rel=1e-13)
