@@ -3,7 +3,7 @@
 import re
 from difflib import get_close_matches
 from typing import Annotated, Any
-from zoneinfo import ZoneInfo, ZoneInfoNotFoundError, available_zones
+from zoneinfo import ZoneInfo, ZoneInfoNotFoundError, available_timezones
 
 from pydantic import BeforeValidator, Field
 
@@ -46,7 +46,7 @@ def _zone(raw: Any) -> str:
     if not isinstance(raw, str):
         raise wrong()
     if not is_zone(raw):
-        raise wrong(_nearest(raw, sorted(available_zones())))
+        raise wrong(_nearest(raw, sorted(available_timezones())))
     return raw
 
 

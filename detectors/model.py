@@ -12,16 +12,10 @@ from detectors.jump_prior import IndependentLevels, JumpPrior
 MODEL_VERSION = 1
 """Raised whenever the same readings and settings would give other posteriors."""
 
-DISPERSIONS = (0.5, 1.0, 2.0, 4.0, 8.0, 16.0, 32.0, 64.0, 128.0, 256.0, 512.0, 1024.0, math.inf)
-WANDERS = (
-    (0.005, 1.0),
-    (0.01, 1.0),
-    (0.02, 0.5),
-    (0.04, 0.25),
-    (0.08, 0.125),
-    (0.16, 0.0625),
-    (0.32, 0.03125),
-)
+DISPERSIONS = (0.5, 1.0, *(2.0 ** (step / 2) for step in range(1, 13)), 128.0, 256.0, 512.0, math.inf)
+"""Steps of the square root of 2 where audiences lie, wider ones beyond."""
+WANDERS = ((0.01, 1.0), (0.03, 0.1), (0.1, 0.02), (0.3, 0.005))
+"""Half a per cent or so of the level per count is never ruled out: no audience stands quite still."""
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,7 +1,7 @@
 """Log lines: one line a record, `key=value` for people or JSON for machines, on standard error.
 
-A line never spans two, whatever a title or a server's answer holds, and never shows a secret that was named to
-`hide`. The instant of a line is that of the machine, also where the program runs on another clock.
+A line never spans two, whatever a title or a server's answer holds, and never shows a secret that was named
+to `hide`. The instant of a line is that of the machine, also where the program runs on another clock.
 """
 
 import json

@@ -6,19 +6,23 @@ from datetime import datetime, timedelta
 from pathlib import Path
 
 from service.clock import Clock
-from service.deliver.backoff import Again, Chance, GiveUp, after_failure
+from service.deliver.backoff import Again, Chance, GiveUp, after_failure, hold_seconds
 from service.outlets.outlet import Kind, Outcome, Outlet
 from storage.engine import Store
 from storage.outbox import Attempt, Delivery, claim_due, record_failure, record_last_failure, record_success
 
 GIVEN_UP = "given up"
-# On top of the longest attempt: what a busy machine and a busy database may take to send and to record.
-CLAIM_SECONDS = 60.0
+# On top of the longest attempt: what a busy machine may take to send and to record.
+CLAIM_SECONDS = 15.0
+MOST_PUT_OFF = 1000
 
 
 @dataclass(frozen=True, slots=True)
 class Report:
-    """What came of one attempt, in the words of its record, for whoever watches."""
+    """What came of one attempt, in the words of its record, for whoever watches.
+
+    `hold_seconds` is for how long the receiver wants to be left alone, None if it did not say.
+    """
 
     delivery_id: str
     outlet: str
@@ -27,6 +31,7 @@ class Report:
     status: int | None
     error: str | None
     took_seconds: float
+    hold_seconds: float | None = None
 
 
 def claim_next(store: Store, outlet: Outlet, clock: Clock, due_by: datetime) -> Delivery | None:
@@ -54,8 +59,26 @@ def attempt(store: Store, outlet: Outlet, delivery: Delivery, clock: Clock, chan
             record_failure(conn, delivery.id, made, due_utc=clock.now() + following.wait)
         else:
             record_last_failure(conn, delivery.id, made)
+    return _report(outlet.name, delivery, made, hold_seconds(outcome))
+
+
+def put_off(store: Store, outlet: Outlet, clock: Clock, due_by: datetime, seconds: float) -> int:
+    """Leave a receiver alone: what else was due at it is due again later, without an attempt counted."""
+    until = clock.now() + timedelta(seconds=seconds)
+    with store.writing() as conn:
+        return len(claim_due(conn, now=due_by, until=until, outlet=outlet.name, limit=MOST_PUT_OFF))
+
+
+def _report(outlet: str, delivery: Delivery, made: Attempt, hold: float | None) -> Report:
     return Report(
-        delivery.id, outlet.name, delivery.shift_id, made.outcome, made.status, made.error, made.took_seconds
+        delivery_id=delivery.id,
+        outlet=outlet,
+        shift_id=delivery.shift_id,
+        outcome=made.outcome,
+        status=made.status,
+        error=made.error,
+        took_seconds=made.took_seconds,
+        hold_seconds=hold,
     )
 
 

@@ -61,7 +61,12 @@ def after_failure(outcome: Outcome, attempts: int, chance: Chance) -> Again | Gi
     return Again(timedelta(seconds=_wait_seconds(outcome, attempts) * (1.0 + JITTER * chance())))
 
 
+def hold_seconds(outcome: Outcome) -> float | None:
+    """For how long the receiver wants to be left alone, capped; None if it did not say."""
+    asked = outcome.retry_after_seconds
+    return None if asked is None else min(asked, LONGEST_RETRY_AFTER_SECONDS)
+
+
 def _wait_seconds(outcome: Outcome, attempts: int) -> float:
     shortest = SHORTEST_WAIT_REFUSED_SECONDS if outcome.kind is Kind.REFUSED else 0.0
-    asked = min(outcome.retry_after_seconds or 0.0, LONGEST_RETRY_AFTER_SECONDS)
-    return max(WAITS_SECONDS[max(attempts, 1) - 1], shortest, asked)
+    return max(WAITS_SECONDS[max(attempts, 1) - 1], shortest, hold_seconds(outcome) or 0.0)

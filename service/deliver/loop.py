@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from datetime import timedelta
 
 from service.clock import Clock
-from service.deliver.attempt import GIVEN_UP, Report, attempt, claim_next
+from service.deliver.attempt import GIVEN_UP, Report, attempt, claim_next, put_off
 from service.deliver.backoff import Chance
 from service.outlets.outlet import Kind, Outlet
 from storage.engine import Store
@@ -61,7 +61,10 @@ def deliver_due(tools: Tools, outlets: Sequence[Outlet], stop: threading.Event) 
 
 
 def deliver_outlet(tools: Tools, outlet: Outlet, stop: threading.Event) -> Counts:
-    """Try what is due at one outlet, each delivery once, at most `MOST_IN_A_PASS`."""
+    """Try what is due at one outlet, each delivery once, at most `MOST_IN_A_PASS`.
+
+    A receiver that says when to come back is left alone until then, with all its deliveries.
+    """
     due_by, counts = tools.clock.now(), Counts()
     for _ in range(MOST_IN_A_PASS):
         delivery = None if stop.is_set() else claim_next(tools.store, outlet, tools.clock, due_by)
@@ -70,6 +73,9 @@ def deliver_outlet(tools: Tools, outlet: Outlet, stop: threading.Event) -> Count
         report = attempt(tools.store, outlet, delivery, tools.clock, tools.chance)
         tools.watcher(report)
         counts += _counted(report)
+        if report.hold_seconds:
+            put_off(tools.store, outlet, tools.clock, due_by, report.hold_seconds)
+            break
     return counts
 
 

@@ -125,7 +125,7 @@ def test_a_crash_between_send_and_record_repeats_the_delivery_under_its_id(tools
         deliver_outlet(Tools(store, clock_of_the_dead, lambda: 0.0, print), desk, GO_ON)
     assert attempts(store, "msg_1") == ()
     assert deliver_due(tools, [desk], GO_ON) == Counts(), "it is still claimed by the dead process"
-    clock.move_on(timedelta(seconds=65))
+    clock.move_on(timedelta(seconds=20))
     assert deliver_due(tools, [desk], GO_ON) == Counts(delivered=1)
     assert [sent[:2] for sent in desk.sent] == [("msg_1", b'{"a":1}')] * 2
 
@@ -187,6 +187,22 @@ def test_a_slow_outlet_delays_no_other(tools, told, put):
         put(f"msg_{outlet.name}", outlet=outlet.name)
     assert deliver_due(tools, [slow, *quick], GO_ON) == Counts(delivered=6)
     assert waited == [True]
+
+
+def test_a_receiver_that_says_when_to_come_back_is_left_alone_with_all_its_messages(
+    tools, store, clock, told, put
+):
+    desk = told("desk", [Outcome(Kind.TRY_LATER, 429, "It answered 429.", 60.0)])
+    other = told("other")
+    for name in ("msg_1", "msg_2", "msg_3"):
+        put(name)
+    put("msg_4", outlet="other")
+    assert deliver_due(tools, [desk, other], GO_ON) == Counts(delivered=1, put_off=1)
+    clock.move_on(timedelta(seconds=59))
+    assert deliver_due(tools, [desk, other], GO_ON) == Counts()
+    assert [stands(store, name).attempts for name in ("msg_1", "msg_2", "msg_3")] == [1, 0, 0]
+    clock.move_on(timedelta(seconds=1))
+    assert deliver_due(tools, [desk, other], GO_ON) == Counts(delivered=3)
 
 
 def test_without_outlets_there_is_nothing_to_do(tools, put):

@@ -4,6 +4,8 @@ from datetime import UTC, datetime, timedelta
 from zoneinfo import ZoneInfo
 
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from service.outlets.retry_after import retry_after_seconds
 
@@ -59,3 +61,12 @@ def test_what_cannot_be_read_says_nothing(text: str | None):
 
 def test_an_endless_number_is_only_large():
     assert retry_after_seconds("9" * 5000, datetime(2026, 3, 16, tzinfo=UTC)) > 1e9
+
+
+@given(
+    st.text(max_size=60)
+    | st.from_regex(r"[A-Z][a-z]{2}, [0-9]{1,3} [A-Z][a-z]{2} [0-9]{1,6} [0-9:]{1,9} GMT")
+)
+def test_no_text_does_harm(text: str):
+    seconds = retry_after_seconds(text, datetime(2026, 3, 16, tzinfo=UTC))
+    assert seconds is None or seconds >= 0.0

@@ -1,0 +1,95 @@
+"""What one observation costs, in yardsticks, and what a stream takes on disk.
+
+A yardstick is ten calls of scipy's log-gamma function on 1000 values, timed between the blocks of the same run:
+the machine may be shared, so only ratios mean anything. One observation is one call of `advance`, with all that
+the daemon does in it. Medians over levels 10 and 10,000 and dispersions 3, 10 and 100, several streams each.
+"""
+
+import sys
+import time
+
+import numpy as np
+from scipy.special import gammaln
+
+from detectors.advance import advance, start
+from detectors.checkpoint_bytes import to_bytes
+from detectors.judge import Rule
+from detectors.model import Model
+from detectors.simulation import OneOffs, as_observations, simulate
+from storage.codec import encode_history
+
+LEVELS, DISPERSIONS = (10.0, 10_000.0), (3.0, 10.0, 100.0)
+SIZES = (30, 100, 200, 600, 1_000, 10_000)
+TIMED = 12
+VALUES = np.linspace(1.0, 1000.0, 1000)
+
+
+def yardstick() -> float:
+    """Seconds of ten log-gamma calls, the quickest of a few."""
+    best = float("inf")
+    for _ in range(5):
+        began = time.perf_counter()
+        for _ in range(10):
+            gammaln(VALUES)
+        best = min(best, time.perf_counter() - began)
+    return best
+
+
+def one_stream(level: float, dispersion: float, seed: int, largest: int):
+    """Yardsticks an observation, checkpoint bytes and posterior bytes, at each size up to the largest."""
+    sizes = [size for size in SIZES if size <= largest]
+    random = np.random.default_rng([seed, int(level), int(dispersion)])
+    counts = simulate(np.full(sizes[-1] + TIMED, level), dispersion, OneOffs(share=0.03), random)
+    observations = as_observations(counts)
+    checkpoint, place, rows = start(Model()), 0, []
+    for size in sizes:
+        checkpoint = advance(checkpoint, observations[place:size], Rule()).checkpoint
+        ratios, place = [], size
+        for _ in range(TIMED):
+            before = yardstick()
+            began = time.perf_counter()
+            done = advance(checkpoint, observations[place : place + 1], Rule())
+            took = time.perf_counter() - began
+            ratios.append(took / ((before + yardstick()) / 2))
+            checkpoint, place = done.checkpoint, place + 1
+        said = done.posteriors[-1]
+        stored = len(encode_history(said.run_lengths, said.dispersion, said.wander))
+        rows.append((size, float(np.median(ratios)), len(to_bytes(checkpoint)), stored))
+    return rows
+
+
+def measure(seeds: int, largest: int):
+    """All streams: a list of (level, dispersion, rows)."""
+    return [
+        (level, dispersion, one_stream(level, dispersion, seed, largest))
+        for level in LEVELS
+        for dispersion in DISPERSIONS
+        for seed in range(seeds)
+    ]
+
+
+def table(found) -> str:
+    """A Markdown table by number of counts."""
+    lines = [
+        "| counts | yardsticks, median | dispersion 16 or less | least to most | checkpoint kB | posterior bytes |",
+        "| --- | --- | --- | --- | --- | --- |",
+    ]
+    for column, size in enumerate(row[0] for row in found[0][2]):
+        costs = np.array([rows[column][1] for _, _, rows in found])
+        low = np.array([rows[column][1] for _, dispersion, rows in found if dispersion <= 16])
+        disk = np.median([rows[column][2] for _, _, rows in found]) / 1000
+        stored = max(rows[column][3] for _, _, rows in found)
+        lines.append(
+            f"| {size} | {np.median(costs):.1f} | {np.median(low):.1f} | {costs.min():.1f} to {costs.max():.1f} "
+            f"| {disk:.0f} | {stored} |"
+        )
+    return "\n".join(lines)
+
+
+def main(seeds: int, largest: int) -> str:
+    """Run and return the table."""
+    return table(measure(seeds, largest))
+
+
+if __name__ == "__main__":
+    print(main(*(int(word) for word in sys.argv[1:3])) if len(sys.argv) > 2 else main(2, 10_000))
