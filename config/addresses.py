@@ -69,7 +69,9 @@ def _in_folder(address: str, around: Surroundings) -> str:
     if name == address:
         return address
     if not name or name.startswith((":memory:", "?")):
-        raise unusable("an address without a file", f'a file behind {_SQLITE}, such as "{_SQLITE}counts.sqlite"')
+        raise unusable(
+            "an address without a file", f'a file behind {_SQLITE}, such as "{_SQLITE}counts.sqlite"'
+        )
     return address if name.startswith("file:") else f"{_SQLITE}{around.folder / name}"
 
 
@@ -106,7 +108,7 @@ SourceAddress = Annotated[
     str | Secret,
     PlainValidator(_source_web),
     _masked,
-    Field(description=f'an http or https address, written here or by reference, {NEEDED}'),
+    Field(description=f"an http or https address, written here or by reference, {NEEDED}"),
 ]
 SecretAddress = Annotated[
     Secret,
@@ -118,12 +120,19 @@ DatabaseAddress = Annotated[
     str | Secret,
     PlainValidator(_database),
     _masked,
-    Field(description=f'a database address by reference, {NEEDED}, or a file such as "{_SQLITE}counts.sqlite"'),
+    Field(
+        description=f'a database address by reference, {NEEDED}, or a file such as "{_SQLITE}counts.sqlite"'
+    ),
 ]
 SigningSecret = Annotated[
     Secret,
     PlainValidator(_signing),
     _masked,
-    Field(description=f'a signing secret by reference, {NEEDED}'),
+    Field(description=f"a signing secret by reference, {NEEDED}"),
 ]
+HeaderName = Annotated[str, Field(pattern=r"^[!#$%&'*+.^_`|~0-9A-Za-z-]+$")]
 HeaderValue = Annotated[str | Secret, PlainValidator(_header), _masked]
+Headers = Annotated[
+    dict[HeaderName, HeaderValue],
+    Field(description="a table of header names, each with a text or a reference"),
+]

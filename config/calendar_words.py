@@ -15,7 +15,7 @@ _DAYS = re.compile(r"([1-9][0-9]{0,3}) days?")
 
 
 def plain_interval(text: str) -> str | None:
-    """The one way to write an interval: `hour`, `day`, `14 days`, `week`, `month`, `year`; None if it is none."""
+    """`hour`, `day`, `14 days`, `week`, `month` or `year`, however it was spaced; None if it is none."""
     plain = " ".join(text.lower().split())
     if plain in _NAMED:
         return plain

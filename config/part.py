@@ -54,4 +54,4 @@ def chosen_by(key: str, known: tuple[str, ...]) -> Discriminator:
         return f"{TAG}{found}" if found in known else None
 
     chooser: Callable[[Any], str | None] = choose
-    return Discriminator(chooser, "choice", "choice", {"key": key, "known": known})
+    return Discriminator(chooser, "choice", "choice", {"key": key, "known": ", ".join(known)})

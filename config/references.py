@@ -45,7 +45,9 @@ def _from_environment(name: str, around: Surroundings) -> Secret:
         raise unusable("a text that can be no variable's name (not repeated)", "the name of a variable")
     found = around.environ.get(name)
     if not found:
-        raise unusable("no such variable" if found is None else "an empty one", f"the variable {name} to be set")
+        raise unusable(
+            "no such variable" if found is None else "an empty one", f"the variable {name} to be set"
+        )
     return Secret(found)
 
 

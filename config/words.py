@@ -6,7 +6,7 @@ from typing import Annotated, Any
 
 from pydantic import AfterValidator, Field, Strict
 
-from config.part import unusable, wrong
+from config.part import wrong
 
 _NAME = re.compile(r"\w[\w .\-]{0,59}")
 TITLE_FIELDS = ("split", "source")

@@ -7,8 +7,7 @@ from service.clock import Clock
 from service.logs import log
 from service.round.once import RoundOutcome, bring_up_source, read_and_keep
 from service.round.plans import RoundPlan
-from service.tell.takers import Takers
-from service.tell.tell import tell_due
+from service.tell.tell import Taker, tell_due
 from storage.engine import Store
 
 
@@ -18,7 +17,7 @@ class Bench:
 
     store: Store
     clock: Clock
-    takers: Takers
+    takers: tuple[Taker, ...]
     stop: threading.Event
 
 

@@ -1,12 +1,15 @@
 """From the settings file to the open database."""
 
 import datetime
+import os
 from collections.abc import Iterator
 from contextlib import contextmanager
 from zoneinfo import ZoneInfo
 
 from sqlalchemy import Connection
 
+from config.loading import load_settings
+from config.settings import Settings
 from service.cli.errors import UnknownName
 from service.cli.options import Given
 from storage.engine import open_existing_store
@@ -38,14 +41,25 @@ def writing(given: Given) -> Iterator[Connection]:
             yield connection
 
 
+def settings_of(given: Given) -> Settings:
+    """The settings, checked.
+
+    Raises
+    ------
+    SettingsError
+        With all that is wrong with them.
+    """
+    return load_settings(given.settings, os.environ)
+
+
 def database_of(given: Given) -> str:
     """Where the settings put the database."""
-    raise NotImplementedError
+    return str(settings_of(given).service.database)
 
 
 def zone_of(given: Given) -> ZoneInfo:
     """The zone in which the settings' people live."""
-    raise NotImplementedError
+    return ZoneInfo(settings_of(given).service.zone)
 
 
 def require_stream(conn: Connection, name: str) -> Stream:

@@ -201,9 +201,9 @@ def run_lengths_json(run_lengths: RunLengths) -> list[dict[str, float]]:
 
 
 def weighted_json(weighted: Weighted) -> list[dict[str, object]]:
-    """Values with their probabilities; infinity, which JSON lacks, by that word."""
+    """Values with their probabilities; infinity, which JSON lacks, as the word for that limit."""
     return [
-        {"value": "infinity" if value == float("inf") else value, "probability": probability}
+        {"value": "poisson" if value == float("inf") else value, "probability": probability}
         for value, probability in zip(weighted.value, weighted.probability, strict=True)
     ]
 

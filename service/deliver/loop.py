@@ -9,6 +9,7 @@ from datetime import timedelta
 from service.clock import Clock
 from service.deliver.attempt import GIVEN_UP, Report, attempt, claim_next, put_off
 from service.deliver.backoff import Chance
+from service.deliver.log_lines import log_report
 from service.outlets.outlet import Kind, Outlet
 from storage.engine import Store
 from storage.outbox import due_deliveries, give_up
@@ -44,10 +45,15 @@ class Tools:
     store: Store
     clock: Clock
     chance: Chance
-    watcher: Watcher
+    watcher: Watcher = log_report
 
 
-def deliver_due(tools: Tools, outlets: Sequence[Outlet], stop: threading.Event) -> Counts:
+def deliver_due(store: Store, outlets: Sequence[Outlet], clock: Clock, chance: Chance) -> Counts:
+    """One pass over all outlets at once, to its end."""
+    return deliver_all(Tools(store, clock, chance), outlets, threading.Event())
+
+
+def deliver_all(tools: Tools, outlets: Sequence[Outlet], stop: threading.Event) -> Counts:
     """One pass over all outlets at once; ends when the slowest has tried all that was due.
 
     When `stop` is set, attempts under way end (each within its outlet's `attempt_seconds`) and none begins.

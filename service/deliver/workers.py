@@ -3,6 +3,7 @@
 import threading
 from collections.abc import Callable, Sequence
 
+from service.deliver.log_lines import log_trouble
 from service.deliver.loop import Tools, deliver_outlet, give_up_strays
 from service.outlets.outlet import Outlet
 from storage.outbox import next_due
@@ -21,7 +22,7 @@ class Deliverer:
     an attempt could not be taken up or recorded; the worker takes a nap and goes on.
     """
 
-    def __init__(self, tools: Tools, outlets: Sequence[Outlet], trouble: Trouble) -> None:
+    def __init__(self, tools: Tools, outlets: Sequence[Outlet], trouble: Trouble = log_trouble) -> None:
         self._tools, self._trouble = tools, trouble
         self._names = [outlet.name for outlet in outlets]
         self._stop = threading.Event()

@@ -11,6 +11,8 @@ from detectors.judge import Rule
 from detectors.jump_prior import JumpPrior
 from detectors.model import Model
 
+POISSON = "poisson"
+
 Value = TypeVar("Value")
 
 
@@ -82,14 +84,15 @@ def read_zone(text: str) -> ZoneInfo:
 
 
 def read_dispersions(text: str) -> tuple[float, ...]:
-    """Dispersions from a list such as "4,16,infinity".
+    """Dispersions from a list such as "4,16,poisson"; the word stands for infinity, the Poisson limit.
 
     Raises
     ------
     UnusableParameter
         If it is none.
     """
-    values = tuple(_number("dispersion", part) for part in text.split(","))
+    parts = ("inf" if part.strip() == POISSON else part for part in text.split(","))
+    values = tuple(_number("dispersion", part) for part in parts)
     if len(set(values)) < len(values):
         raise UnusableParameter("dispersion", text, "a list of different numbers")
     return values

@@ -132,7 +132,7 @@ def _model(model: Model) -> dict[str, object]:
         "mean_gap": model.gap.mean,
         "gap_shape": model.gap.shape,
         "one_off_share": model.one_off_share,
-        # JSON has no infinity; this word is what --dispersion takes for the Poisson limit.
-        "dispersions": tuple("infinity" if value == float("inf") else value for value in model.dispersions),
+        # JSON has no infinity; the word is what settings and --dispersion have for the Poisson limit.
+        "dispersions": tuple("poisson" if value == float("inf") else value for value in model.dispersions),
         "wanders": model.wanders,
     }

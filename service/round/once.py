@@ -59,7 +59,7 @@ def bring_up_source(
     store: Store, plan: RoundPlan, clock: Clock, stop: threading.Event
 ) -> tuple[tuple[str, Brought], ...]:
     """Fold the backlog of a source's streams, stopping between streams when asked to."""
-    timing, streams = _timing(store, plan, clock.now()), _streams(store, plan)
+    timing, streams = timing_of(store, plan, clock.now()), _streams(store, plan)
     brought = []
     for stream in streams:
         if stop.is_set():
@@ -98,7 +98,8 @@ def _streams(store: Store, plan: RoundPlan) -> tuple[StreamPlan, ...]:
     return tuple(stream for stream in planned if stream is not None)
 
 
-def _timing(store: Store, plan: RoundPlan, now: datetime.datetime) -> Timing:
+def timing_of(store: Store, plan: RoundPlan, now: datetime.datetime) -> Timing:
+    """How far the source's readings reach, and what would be told late."""
     with store.reading() as conn:
         reaches = newest_at(conn, plan.name)
         rounds = list_rounds(conn, source=plan.name, limit=ROUNDS_LOOKED_AT)

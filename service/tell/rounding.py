@@ -9,7 +9,7 @@ import math
 from dataclasses import dataclass
 
 SHARE_OF_WIDTH = 0.25
-MOST_DIGITS = 3
+FIRST_TO_THIRD_DIGIT = 100.0
 UNITS = (5.0, 1.0)
 
 
@@ -39,7 +39,7 @@ def rounded(figure: Between, *, finest: float = math.inf) -> str:
 def step_of(figure: Between, *, finest: float = math.inf) -> float:
     """The step to which a figure other than 0 is rounded."""
     first_digit = math.pow(10.0, math.floor(math.log10(abs(figure.value))))
-    third_digit = first_digit / 10 ** (MOST_DIGITS - 1)
+    third_digit = first_digit / FIRST_TO_THIRD_DIGIT
     width = figure.high - figure.low
     wanted = min(width if math.isfinite(width) else 0.0, finest) * SHARE_OF_WIDTH
     return min(max(_at_most(wanted), third_digit), first_digit)

@@ -2,8 +2,8 @@
 
 Writing a slate's messages and marking its shifts as told is one transaction: a crash before it tells nothing,
 a crash after it has told everything, and a second teller finds nothing left to do. A shift that no outlet
-takes is marked too, so that an outlet that is added next year does not begin with last year's alerts; it stays in
-the table of shifts, which says how it was told.
+takes is marked too, so that an outlet that is added next year does not begin with last year's alerts; the
+table of shifts keeps it, and how it was told.
 """
 
 import datetime

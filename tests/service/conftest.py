@@ -75,11 +75,12 @@ class Received:
 
 @dataclass
 class Receiver:
-    """Answers in the order of `answers`, and 200 when they are used up."""
+    """Answers in the order of `answers`, and 200 when they are used up. `came` is set by the first POST."""
 
     address: str
     answers: list[Answer] = field(default_factory=list)
     received: list[Received] = field(default_factory=list)
+    came: threading.Event = field(default_factory=threading.Event)
     over: threading.Event = field(default_factory=threading.Event)
     lock: threading.Lock = field(default_factory=threading.Lock)
 
@@ -89,6 +90,7 @@ class Receiver:
     def take(self, received: Received) -> Answer:
         with self.lock:
             self.received.append(received)
+            self.came.set()
             return self.answers.pop(0) if self.answers else Answer()
 
 

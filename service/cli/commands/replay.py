@@ -28,7 +28,7 @@ from service.cli.options import json_option
 @click.option("--smallest-shift", type=float, help="Smallest shift worth hearing about; 0.15 is 15 %.")
 @click.option("--one-off-share", type=float, help="Share of counts that are one-offs, from 0 to below 1.")
 @click.option("--wander", help='Values of the wander with prior weights: "0" or "0.005:1,0.01:0.5".')
-@click.option("--dispersion", help='Values of the dispersion: "4,8,16"; "infinity" is the Poisson limit.')
+@click.option("--dispersion", help='Values of the dispersion: "4,8,16"; "poisson" stands for infinity.')
 def command(
     file: Path,
     as_json: bool,

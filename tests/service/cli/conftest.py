@@ -27,6 +27,20 @@ SETTINGS = """
 [service]
 database = "{database}"
 zone = "Europe/Berlin"
+
+[[source]]
+name = "plays"
+kind = "csv"
+path = "plays.csv"
+
+[source.fields]
+at = "day"
+count = "plays"
+
+[source.streams]
+shape = "calendar"
+interval = "week"
+absent = "missing"
 """
 COUNTS = [104, 97, 118, 90, None, 101]
 MONDAYS = [datetime.date(2026, 1, 5) + datetime.timedelta(weeks=week) for week in range(len(COUNTS))]

@@ -7,7 +7,7 @@ import pytest
 
 from service.deliver.attempt import claim_next
 from service.deliver.backoff import MOST_ATTEMPTS
-from service.deliver.loop import MOST_IN_A_PASS, Counts, Tools, deliver_due, deliver_outlet
+from service.deliver.loop import MOST_IN_A_PASS, Counts, Tools, deliver_all, deliver_due, deliver_outlet
 from service.outlets.outlet import Kind, Outcome
 from storage.engine import Store
 from storage.errors import StoreBusy
@@ -30,24 +30,24 @@ def attempts(store: Store, delivery_id: str):
 def test_what_is_due_is_sent_once_with_its_id_and_bytes(tools, store, clock, told, put):
     desk = told("desk")
     put("msg_1", body=b"\x00\xffas is")
-    assert deliver_due(tools, [desk], GO_ON) == Counts(delivered=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(delivered=1)
     assert desk.sent == [("msg_1", b"\x00\xffas is", clock.now())]
     assert stands(store, "msg_1").state == "delivered"
-    assert deliver_due(tools, [desk], GO_ON) == Counts()
+    assert deliver_all(tools, [desk], GO_ON) == Counts()
     assert len(desk.sent) == 1
 
 
 def test_a_failure_is_recorded_and_tried_again_when_it_is_due(tools, store, clock, told, put, reports):
     desk = told("desk", [DOWN])
     put("msg_1")
-    assert deliver_due(tools, [desk], GO_ON) == Counts(put_off=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(put_off=1)
     waiting = stands(store, "msg_1")
     assert (waiting.state, waiting.attempts, waiting.last_status) == ("waiting", 1, 500)
     assert waiting.due_utc == clock.now() + timedelta(seconds=10)
     clock.move_on(timedelta(seconds=9))
-    assert deliver_due(tools, [desk], GO_ON) == Counts()
+    assert deliver_all(tools, [desk], GO_ON) == Counts()
     clock.move_on(timedelta(seconds=1))
-    assert deliver_due(tools, [desk], GO_ON) == Counts(delivered=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(delivered=1)
     assert [made.outcome for made in attempts(store, "msg_1")] == ["try later", "delivered"]
     assert [report.outcome for report in reports] == ["try later", "delivered"]
     assert [sent[0] for sent in desk.sent] == ["msg_1", "msg_1"]
@@ -58,7 +58,7 @@ def test_it_is_given_up_visibly_and_can_be_sent_again(tools, store, clock, told,
     put("msg_1")
     counts = Counts()
     for _ in range(MOST_ATTEMPTS + 3):
-        counts += deliver_due(tools, [desk], GO_ON)
+        counts += deliver_all(tools, [desk], GO_ON)
         clock.move_on(timedelta(days=2))
     assert counts == Counts(put_off=MOST_ATTEMPTS - 1, given_up=1)
     given_up = stands(store, "msg_1")
@@ -66,17 +66,17 @@ def test_it_is_given_up_visibly_and_can_be_sent_again(tools, store, clock, told,
     assert attempts(store, "msg_1")[-1].outcome == "given up"
     with store.writing() as conn:
         send_again(conn, "msg_1", now=clock.now())
-    assert deliver_due(tools, [desk], GO_ON) == Counts(delivered=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(delivered=1)
     assert {sent[:2] for sent in desk.sent} == {("msg_1", b'{"a":1}')}
 
 
 def test_what_was_sent_again_by_hand_has_all_its_attempts_anew(tools, store, clock, told, put):
     desk = told("desk", [Outcome(Kind.ENDED, 410, "Gone."), DOWN])
     put("msg_1")
-    assert deliver_due(tools, [desk], GO_ON) == Counts(given_up=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(given_up=1)
     with store.writing() as conn:
         send_again(conn, "msg_1", now=clock.now())
-    assert deliver_due(tools, [desk], GO_ON) == Counts(put_off=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(put_off=1)
     assert stands(store, "msg_1").attempts == 1
 
 
@@ -84,7 +84,7 @@ def test_an_outlet_that_raises_is_recorded_without_the_text_of_the_error(tools, 
     desk = told("desk", [RuntimeError("http://secret.example/t0ken")])
     put("msg_1")
     put("msg_2")
-    assert deliver_due(tools, [desk], GO_ON) == Counts(delivered=1, put_off=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(delivered=1, put_off=1)
     error = stands(store, "msg_1").last_error
     assert error.startswith("Unexpected RuntimeError in conftest.py, line ")
     assert "secret" not in error
@@ -104,7 +104,7 @@ def test_no_transaction_is_open_while_a_message_is_on_its_way(tools, store, told
 
     put("msg_1")
     put("msg_2", outlet="elsewhere")
-    assert deliver_due(tools, [told("desk", before=write_meanwhile)], GO_ON) == Counts(delivered=1)
+    assert deliver_all(tools, [told("desk", before=write_meanwhile)], GO_ON) == Counts(delivered=1)
     assert stands(store, "msg_2").last_error == "seen"
 
 
@@ -124,9 +124,9 @@ def test_a_crash_between_send_and_record_repeats_the_delivery_under_its_id(tools
     with pytest.raises(Killed):
         deliver_outlet(Tools(store, clock_of_the_dead, lambda: 0.0, print), desk, GO_ON)
     assert attempts(store, "msg_1") == ()
-    assert deliver_due(tools, [desk], GO_ON) == Counts(), "it is still claimed by the dead process"
+    assert deliver_all(tools, [desk], GO_ON) == Counts(), "it is still claimed by the dead process"
     clock.move_on(timedelta(seconds=20))
-    assert deliver_due(tools, [desk], GO_ON) == Counts(delivered=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(delivered=1)
     assert [sent[:2] for sent in desk.sent] == [("msg_1", b'{"a":1}')] * 2
 
 
@@ -159,9 +159,9 @@ def test_nothing_begins_after_the_stop(tools, store, told, put):
     desk = told("desk", before=stop.set)
     put("msg_1")
     put("msg_2")
-    assert deliver_due(tools, [desk], stop) == Counts(delivered=1)
+    assert deliver_all(tools, [desk], stop) == Counts(delivered=1)
     assert stands(store, "msg_2").attempts == 0
-    assert deliver_due(tools, [desk], stop) == Counts()
+    assert deliver_all(tools, [desk], stop) == Counts()
 
 
 def test_a_pass_is_bounded(tools, store, clock, told):
@@ -172,8 +172,8 @@ def test_a_pass_is_bounded(tools, store, clock, told):
             name = f"msg_{number}"
             add_delivery(conn, NewDelivery(name, "desk", None, b"", clock.now(), clock.now()))
     desk = told("desk")
-    assert deliver_due(tools, [desk], GO_ON) == Counts(delivered=MOST_IN_A_PASS)
-    assert deliver_due(tools, [desk], GO_ON) == Counts(delivered=5)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(delivered=MOST_IN_A_PASS)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(delivered=5)
 
 
 def test_a_slow_outlet_delays_no_other(tools, told, put):
@@ -185,7 +185,7 @@ def test_a_slow_outlet_delays_no_other(tools, told, put):
     put("msg_slow", outlet="slow")
     for outlet in quick:
         put(f"msg_{outlet.name}", outlet=outlet.name)
-    assert deliver_due(tools, [slow, *quick], GO_ON) == Counts(delivered=6)
+    assert deliver_all(tools, [slow, *quick], GO_ON) == Counts(delivered=6)
     assert waited == [True]
 
 
@@ -197,25 +197,25 @@ def test_a_receiver_that_says_when_to_come_back_is_left_alone_with_all_its_messa
     for name in ("msg_1", "msg_2", "msg_3"):
         put(name)
     put("msg_4", outlet="other")
-    assert deliver_due(tools, [desk, other], GO_ON) == Counts(delivered=1, put_off=1)
+    assert deliver_all(tools, [desk, other], GO_ON) == Counts(delivered=1, put_off=1)
     clock.move_on(timedelta(seconds=59))
-    assert deliver_due(tools, [desk, other], GO_ON) == Counts()
+    assert deliver_all(tools, [desk, other], GO_ON) == Counts()
     assert [stands(store, name).attempts for name in ("msg_1", "msg_2", "msg_3")] == [1, 0, 0]
     clock.move_on(timedelta(seconds=1))
-    assert deliver_due(tools, [desk, other], GO_ON) == Counts(delivered=3)
+    assert deliver_all(tools, [desk, other], GO_ON) == Counts(delivered=3)
 
 
 def test_without_outlets_there_is_nothing_to_do(tools, put):
     put("msg_1")
-    assert deliver_due(tools, [], GO_ON) == Counts()
+    assert deliver_all(tools, [], GO_ON) == Counts()
 
 
 def test_messages_of_an_outlet_that_left_the_settings_are_given_up_visibly(tools, store, clock, told, put):
     put("msg_1", outlet="old desk")
     clock.move_on(timedelta(days=4))
-    assert deliver_due(tools, [told("desk")], GO_ON) == Counts()
+    assert deliver_all(tools, [told("desk")], GO_ON) == Counts()
     clock.move_on(timedelta(days=1))
-    assert deliver_due(tools, [told("desk")], GO_ON) == Counts(given_up=1)
+    assert deliver_all(tools, [told("desk")], GO_ON) == Counts(given_up=1)
     with store.reading() as conn:
         (stray,) = list_deliveries(conn, state="given_up")
     assert (stray.id, stray.attempts) == ("msg_1", 0)
@@ -223,3 +223,17 @@ def test_messages_of_an_outlet_that_left_the_settings_are_given_up_visibly(tools
         'Outlet "old desk" has not been in the settings for 5 days. Put it back and send this delivery '
         "again, or leave it."
     )
+
+
+def test_one_call_makes_a_whole_pass_and_says_so_in_the_log(store, clock, told, put, caplog):
+    outlets = [told("desk"), told("other", [DOWN]), told("third", [Outcome(Kind.ENDED, 410, "Gone.")])]
+    for number, outlet in enumerate(outlets):
+        put(f"msg_{number}", outlet=outlet.name)
+    caplog.set_level("INFO", "knickpoint")
+    assert deliver_due(store, outlets, clock, lambda: 0.0) == Counts(delivered=1, put_off=1, given_up=1)
+    lines = {record.facts["outlet"]: (record.levelname, record.facts["why"]) for record in caplog.records}
+    assert lines == {
+        "desk": ("INFO", None),
+        "other": ("WARNING", "It answered 500."),
+        "third": ("ERROR", "Gone."),
+    }

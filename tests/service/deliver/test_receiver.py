@@ -7,7 +7,7 @@ from datetime import timedelta
 import pytest
 from standardwebhooks import Webhook as Reference
 
-from service.deliver.loop import Counts, deliver_due
+from service.deliver.loop import Counts, deliver_all
 from service.outlets.signing import Signer
 from service.outlets.webhook import Webhook
 from storage.engine import Store
@@ -47,9 +47,9 @@ def test_500_then_200_repeats_id_and_bytes_with_a_fresh_timestamp(
     receiver.will(answer(500))
     put("msg_1", body='{"title": "Süden"}'.encode())
     first = clock.now()
-    assert deliver_due(tools, [desk], GO_ON) == Counts(put_off=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(put_off=1)
     clock.move_on(timedelta(seconds=10))
-    assert deliver_due(tools, [desk], GO_ON) == Counts(delivered=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(delivered=1)
     one, other = receiver.received
     assert (one.body, one.headers["webhook-id"]) == (other.body, other.headers["webhook-id"])
     assert signature_holds(one, first)
@@ -63,19 +63,19 @@ def test_429_with_retry_after_in_seconds_and_as_a_date(tools, store, clock, put,
         answer(503, (("Retry-After", "Mon, 16 Mar 2026 10:00:00 GMT"),)),
     )
     put("msg_1")
-    deliver_due(tools, [desk], GO_ON)
+    deliver_all(tools, [desk], GO_ON)
     assert due_in(store, clock, "msg_1") == 90.0
     clock.move_on(timedelta(seconds=90))
-    deliver_due(tools, [desk], GO_ON)
+    deliver_all(tools, [desk], GO_ON)
     assert due_in(store, clock, "msg_1") == 3600.0 - 90.0
 
 
 def test_410_ends_it_at_once(tools, store, clock, put, receiver, answer, desk):
     receiver.will(answer(410))
     put("msg_1")
-    assert deliver_due(tools, [desk], GO_ON) == Counts(given_up=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(given_up=1)
     clock.move_on(timedelta(days=30))
-    assert deliver_due(tools, [desk], GO_ON) == Counts()
+    assert deliver_all(tools, [desk], GO_ON) == Counts()
     assert outcomes(store, "msg_1") == [("given up", 410)]
 
 
@@ -83,7 +83,7 @@ def test_410_ends_it_at_once(tools, store, clock, put, receiver, answer, desk):
 def test_what_people_must_mend_waits_for_them(tools, store, clock, put, receiver, answer, desk, status):
     receiver.will(answer(status, (("location", "/elsewhere"),)))
     put("msg_1")
-    assert deliver_due(tools, [desk], GO_ON) == Counts(put_off=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(put_off=1)
     assert due_in(store, clock, "msg_1") == 3600.0
     assert outcomes(store, "msg_1") == [("refused", status)]
     assert [one.path for one in receiver.received] == ["/alerts"]
@@ -92,12 +92,12 @@ def test_what_people_must_mend_waits_for_them(tools, store, clock, put, receiver
 def test_hanging_up_and_hanging(tools, store, clock, put, receiver, answer, desk):
     receiver.will(answer(drop=True), answer(hang=True))
     put("msg_1")
-    assert deliver_due(tools, [desk], GO_ON) == Counts(put_off=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(put_off=1)
     clock.move_on(timedelta(seconds=10))
-    assert deliver_due(tools, [desk], GO_ON) == Counts(put_off=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(put_off=1)
     assert outcomes(store, "msg_1") == [("try later", None)] * 2
     clock.move_on(timedelta(seconds=30))
-    assert deliver_due(tools, [desk], GO_ON) == Counts(delivered=1)
+    assert deliver_all(tools, [desk], GO_ON) == Counts(delivered=1)
 
 
 def test_a_receiver_that_hangs_does_not_delay_another(tools, clock, put, open_receiver, answer):
@@ -111,5 +111,5 @@ def test_a_receiver_that_hangs_does_not_delay_another(tools, clock, put, open_re
     ]
     order = []
     watched = type(tools)(tools.store, clock, tools.chance, lambda report: order.append(report.outlet))
-    assert deliver_due(watched, outlets, GO_ON) == Counts(delivered=1, put_off=1)
+    assert deliver_all(watched, outlets, GO_ON) == Counts(delivered=1, put_off=1)
     assert order == ["quick", "slow"]

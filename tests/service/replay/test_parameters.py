@@ -44,7 +44,7 @@ def test_other_wanders_are_refused(text: str) -> None:
 
 
 def test_dispersions() -> None:
-    assert read_dispersions("4, 16,infinity") == (4.0, 16.0, math.inf)
+    assert read_dispersions("4, 16,poisson") == (4.0, 16.0, math.inf)
 
 
 @pytest.mark.parametrize("text", ["", "4,,8", "many", "4,4"])

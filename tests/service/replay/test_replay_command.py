@@ -66,7 +66,7 @@ def test_it_says_what_advance_says(replayed: Replay) -> None:
 def test_a_fall_is_told_with_its_place_in_the_file(replayed: Replay) -> None:
     (alert,) = replayed(_weekly(HIGH + LOW))["alerts"]
     assert alert["start_index"] == len(HIGH)
-    assert len(HIGH) + 2 <= alert["announced_index"] < len(HIGH) + 8
+    assert len(HIGH) + Rule().lasting - 1 <= alert["announced_index"] < len(HIGH) + 8
     assert alert["level_before"][1] > 90
     assert alert["level_after"][1] < 60
     assert set(alert) == {"announced_index", "start_index", "probability", "level_before", "level_after"}
@@ -121,7 +121,13 @@ def test_the_interval_can_be_named(replayed: Replay) -> None:
 
 def test_the_settings_of_the_answer_are_in_it(replayed: Replay) -> None:
     answer = replayed(_weekly([5, 6, 7]), "--threshold", "0.8", "--mean-gap", "90", "--fewest-counts", "20")
-    assert answer["judgement"] == {"threshold": 0.8, "window": 40, "lasting": 3, "fewest_counts": 20}
+    rule = Rule(threshold=0.8, fewest_counts=20)
+    assert answer["judgement"] == {
+        "threshold": 0.8,
+        "window": rule.window,
+        "lasting": rule.lasting,
+        "fewest_counts": 20,
+    }
     assert (answer["model"]["mean_gap"], answer["model"]["dispersions"]) == (90.0, [4.0, 16.0])
 
 

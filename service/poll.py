@@ -1,0 +1,51 @@
+"""`knickpoint poll`: one round now, with everything that follows it."""
+
+import os
+import random
+import threading
+from collections.abc import Sequence
+from pathlib import Path
+
+from service.clock import SystemClock
+from service.deliver.loop import Tools, deliver_due
+from service.round.plans import RoundPlan
+from service.wiring import Wired, wire
+from service.work import Bench, pass_for
+from storage.engine import open_store
+from storage.migrate import upgrade
+from storage.rounds import Round, get_round
+
+
+class UnknownSource(ValueError):
+    """A source that the settings do not name."""
+
+    def __init__(self, got: str, known: Sequence[str]) -> None:
+        self.got, self.known = got, tuple(known)
+        super().__init__(f'No source is named "{got}". The settings name: {", ".join(known) or "none"}.')
+
+
+def poll_once(settings: Path, sources: Sequence[str]) -> tuple[Round, ...]:
+    """Read, keep, advance, record, tell and deliver, for these sources or for all.
+
+    Raises
+    ------
+    UnknownSource
+        If a source is not in the settings; then nothing was done.
+    """
+    wired = wire(settings, os.environ)
+    plans = [_named(wired, name) for name in sources] or list(wired.rounds)
+    clock, stop = SystemClock(), threading.Event()
+    with open_store(wired.database) as store:
+        upgrade(store)
+        bench = Bench(store, clock, wired.takers, stop)
+        done = [pass_for(bench, plan).round_id for plan in plans]
+        deliver_due(Tools(store, clock, random.random, lambda report: None), wired.outlets, stop)
+        with store.reading() as conn:
+            return tuple(get_round(conn, round_id) for round_id in done)
+
+
+def _named(wired: Wired, name: str) -> RoundPlan:
+    for plan in wired.rounds:
+        if plan.name == name:
+            return plan
+    raise UnknownSource(name, [plan.name for plan in wired.rounds])

@@ -1,0 +1,57 @@
+"""Rebuilding a stream: its posteriors folded again from its readings, from the first on."""
+
+import os
+from dataclasses import dataclass
+from pathlib import Path
+
+from service.clock import SystemClock
+from service.round.fold import bring_up
+from service.round.once import timing_of
+from service.round.plans import RoundPlan, StreamPlan
+from service.wiring import wire
+from storage.checkpoints import drop_checkpoints
+from storage.engine import Store, open_existing_store
+from storage.migrate import require_current
+from storage.streams import Stream, bump_epoch, get_stream
+
+
+@dataclass(frozen=True, slots=True)
+class Rebuilt:
+    """A rebuilt stream. `folded` is None when the settings no longer describe it, and nothing was done."""
+
+    stream_id: str
+    folded: int | None
+    new_shifts: int
+
+
+def rebuild_stream(settings: Path, stream_id: str) -> Rebuilt:
+    """Forget a stream's checkpoints and fold it again. What was said before is kept as superseded evidence.
+
+    Shifts that were told stay as they are; one found again is the same shift.
+    """
+    wired = wire(settings, os.environ)
+    with open_existing_store(wired.database) as store:
+        require_current(store)
+        with store.reading() as conn:
+            stream = get_stream(conn, stream_id)
+        found = _plan_of(wired.rounds, stream)
+        if found is None:
+            return Rebuilt(stream_id, None, 0)
+        return _rebuilt(store, *found)
+
+
+def _plan_of(rounds: tuple[RoundPlan, ...], stream: Stream) -> tuple[RoundPlan, StreamPlan] | None:
+    for plan in rounds:
+        if plan.name == stream.source:
+            described = plan.stream_for(stream.split)
+            return None if described is None else (plan, described)
+    return None
+
+
+def _rebuilt(store: Store, plan: RoundPlan, stream: StreamPlan) -> Rebuilt:
+    with store.writing() as conn:
+        drop_checkpoints(conn, stream.id)
+        bump_epoch(conn, stream.id)
+    clock = SystemClock()
+    brought = bring_up(store, stream, clock, timing_of(store, plan, clock.now()))
+    return Rebuilt(stream.id, brought.folded, len(brought.shifts))
