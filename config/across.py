@@ -1,5 +1,6 @@
 """Checks across fields. They read the raw file, so that they are made even where other values are faulty."""
 
+import json
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 from difflib import get_close_matches
@@ -163,7 +164,12 @@ def _slates(raw: dict[str, Any]) -> Iterator[Clash]:
         for place, slate in enumerate(_texts(outlet.get("slates"))):
             if slate not in known:
                 near = get_close_matches(slate, known, n=1)
-                yield Clash((*loc, "slates", place), f'"{slate[:60]}"', needed, near[0] if near else None)
+                yield Clash(
+                    (*loc, "slates", place),
+                    json.dumps(slate[:60], ensure_ascii=not slate.isprintable()),
+                    needed,
+                    near[0] if near else None,
+                )
 
 
 def _texts(raw: Any) -> Iterable[str]:

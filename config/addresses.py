@@ -9,6 +9,7 @@ from urllib.parse import SplitResult, parse_qsl, urlsplit
 from pydantic import Field, PlainValidator, ValidationInfo
 from pydantic.functional_serializers import PlainSerializer
 
+from config.guarded import is_login_value
 from config.part import Surroundings, surroundings, unusable
 from config.references import NEEDED, origin, resolve
 from config.secret import Secret
@@ -46,7 +47,7 @@ def _source_web(raw: Any, info: ValidationInfo) -> str | Secret:
 
 def _secret_web(raw: Any, info: ValidationInfo) -> Secret:
     found = resolve(raw, surroundings(info))
-    if _web(found.reveal()) is None:
+    if found.is_read and _web(found.reveal()) is None:
         raise unusable(f"{origin(raw)}, which is none", "an http or https address")
     return found
 
@@ -58,6 +59,8 @@ def _database(raw: Any, info: ValidationInfo) -> str | Secret:
             raise unusable("another text written here (not repeated)")
         return _in_folder(raw, around)
     found = resolve(raw, around)
+    if not found.is_read:
+        return found
     if "://" not in found.reveal():
         raise unusable(f"{origin(raw)}, which is none", "a database address")
     return Secret(_in_folder(found.reveal(), around))
@@ -77,6 +80,8 @@ def _in_folder(address: str, around: Surroundings) -> str:
 
 def _signing(raw: Any, info: ValidationInfo) -> Secret:
     found = resolve(raw, surroundings(info))
+    if not found.is_read:
+        return found
     length = _signing_bytes(found.reveal().strip())
     if length is None or not 24 <= length <= 64:
         size = "" if length is None else f" ({length} bytes)"
@@ -96,7 +101,11 @@ def _signing_bytes(text: str) -> int | None:
 
 def _header(raw: Any, info: ValidationInfo) -> str | Secret:
     value = raw if isinstance(raw, str) else resolve(raw, surroundings(info))
+    if isinstance(value, Secret) and not value.is_read:
+        return value
     text = value if isinstance(value, str) else value.reveal()
+    if isinstance(raw, str) and is_login_value(raw):
+        raise unusable("a text written here (not repeated)", f"a reference, {NEEDED}")
     if not (text.isascii() and text.isprintable() and text == text.strip()):
         raise unusable(origin(raw), "printable ASCII characters without blanks around them")
     return value

@@ -39,6 +39,14 @@ class SettingsError(Exception):
     """The settings cannot be used. Its text is one sentence or a list of faults, and holds no secret."""
 
 
+class SecretNotRead(SettingsError):
+    """A secret was asked for where the settings had been read without looking up their secrets."""
+
+    def __init__(self, origin: str) -> None:
+        self.origin = origin
+        super().__init__(f"{origin} was not looked up: the settings were read without their secrets.")
+
+
 class SettingsFaults(SettingsError):
     """All that is wrong with a settings file, at once."""
 

@@ -10,7 +10,8 @@ from pydantic_core import ErrorDetails
 
 from config.across import Clash
 from config.errors import Fault
-from config.key_paths import Loc, key_path, known_at, raw_at, shown
+from config.guarded import could_be_secret
+from config.key_paths import Loc, key_path, known_at, quoted, raw_at, shown
 
 _LITERALS = re.compile(r"'([^']*)'")
 
@@ -76,7 +77,9 @@ def _choice(loc: Loc, key: str, known: list[str], raw: Any, file: Path) -> Fault
 
 
 def _word(value: Any) -> str:
-    return f'"{value[:60]}"' if isinstance(value, str) else shown(value, ("?",))
+    if isinstance(value, str):
+        return "a text (not repeated)" if could_be_secret(value) else quoted(value)
+    return shown(value, ("?",))
 
 
 def _needed(loc: Loc) -> str:

@@ -8,6 +8,7 @@ from typing import Any, get_args, get_origin
 
 from pydantic.fields import FieldInfo
 
+from config.guarded import could_be_secret
 from config.part import TAG, Part
 from config.settings import Sections
 
@@ -63,7 +64,7 @@ def key_path(raw: Any, loc: Loc) -> str:
         if isinstance(item, int):
             words[-1] += f"[{item + 1}]{_name_of(raw, loc, place)}"
         else:
-            words.append(item if _BARE.fullmatch(item) else json.dumps(item, ensure_ascii=False))
+            words.append(item if _BARE.fullmatch(item) else quoted(item))
     return " . ".join(words)
 
 
@@ -92,10 +93,10 @@ def shown(value: Any, loc: Loc) -> str:
             return "a table"
         case list():
             return "a list"
-        case str() if _may_be_secret(loc):
+        case str() if _may_be_secret(loc) or could_be_secret(value):
             return "a text (not repeated)"
         case str():
-            return json.dumps(_short(value), ensure_ascii=False)
+            return quoted(value)
         case _ if _may_be_secret(loc):
             return f"a {'truth value' if isinstance(value, bool) else 'number or date'} (not repeated)"
         case bool():
@@ -104,20 +105,22 @@ def shown(value: Any, loc: Loc) -> str:
             return str(value)
 
 
+def quoted(text: str) -> str:
+    """A text of the file on one line, not too long."""
+    short = text if len(text) <= LONGEST_SHOWN else text[:LONGEST_SHOWN] + "..."
+    return json.dumps(short, ensure_ascii=not short.isprintable())
+
+
 def _may_be_secret(loc: Loc) -> bool:
     known = known_at(loc)
     return bool(known.parts) or known.field is None or not HIDDEN_BELOW.isdisjoint(map(str, loc))
-
-
-def _short(text: str) -> str:
-    return text if len(text) <= LONGEST_SHOWN else text[:LONGEST_SHOWN] + "..."
 
 
 def _name_of(raw: Any, loc: Loc, place: int) -> str:
     if place != 1 or loc[0] not in _NAMED:
         return ""
     name = raw_at(raw, (*plain(loc)[:2], "name"))
-    return f" {json.dumps(_short(name), ensure_ascii=False)}" if isinstance(name, str) else ""
+    return f" {quoted(name)}" if isinstance(name, str) else ""
 
 
 def _field(parts: tuple[type[Part], ...], key: str) -> FieldInfo | None:

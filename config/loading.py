@@ -27,7 +27,25 @@ def load_settings(path: Path, environ: Mapping[str, str]) -> Settings:
     SettingsFaults
         With all that is wrong, and no secret in it.
     """
-    raw = _raw(path)
+    return settings_of(_raw(path), path, environ)
+
+
+def read_settings(path: Path) -> Settings:
+    """Read the settings file alone, for commands that need no secret; to reveal one is an error then.
+
+    Raises
+    ------
+    SettingsFaults
+        With all that is wrong with the file.
+    """
+    return settings_of(_raw(path), path, None)
+
+
+def settings_of(raw: dict[str, Any], path: Path, environ: Mapping[str, str] | None) -> Settings:
+    """Settings from what the file at a path was parsed to; raises as `load_settings` does.
+
+    With `environ` None the secrets stay where they are.
+    """
     around = Surroundings(path.absolute().parent, environ, [])
     sections, errors = _validated(raw, around)
     faults = faults_of(errors, clashes_in(raw), raw, path)
@@ -56,11 +74,19 @@ def _raw(path: Path) -> dict[str, Any]:
     text = _text(path)
     try:
         return tomllib.loads(text)
-    except tomllib.TOMLDecodeError as error:
-        where = _LINE.search(str(error))
-        line = f"line {where[1]}, column {where[2]}" if where else "its end"
-        why = _LINE.sub("", str(error)).replace("(at end of document)", "").strip()
-    raise SettingsUnreadable(path, "TOML", f"{why} at {line}", f"{path} is no TOML: at {line}: {why}.")
+    except RecursionError:
+        sentence = f"{path} cannot be read: its tables or lists stand too deep in one another."
+        failure = SettingsUnreadable(path, "TOML", "lists too deep in one another", sentence)
+    except ValueError as error:
+        failure = _no_toml(path, str(error))
+    raise failure
+
+
+def _no_toml(path: Path, error: str) -> SettingsUnreadable:
+    where = _LINE.search(error)
+    line = f"line {where[1]}, column {where[2]}" if where else "its end"
+    why = _LINE.sub("", error).replace("(at end of document)", "").strip()
+    return SettingsUnreadable(path, "TOML", f"{why} at {line}", f"{path} is no TOML: at {line}: {why}.")
 
 
 def _text(path: Path) -> str:

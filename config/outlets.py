@@ -25,7 +25,7 @@ class WebhookOutlet(Part):
     address: SecretAddress
     secret: SigningSecret
     slates: Slates | None = None
-    deadline: Deadline = datetime.timedelta(seconds=20)
+    deadline: Deadline = datetime.timedelta(seconds=15)
 
 
 # A second kind joins by `chosen_by`, as in sources.py; a choice from one is none.

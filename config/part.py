@@ -20,10 +20,13 @@ class Part(BaseModel):
 
 @dataclass(frozen=True, slots=True)
 class Surroundings:
-    """What the file is read in: its folder, the environment, and where warnings gather."""
+    """What the file is read in: its folder, the environment, and where warnings gather.
+
+    `environ` None leaves all secrets where they are.
+    """
 
     folder: Path
-    environ: Mapping[str, str] = field(repr=False)
+    environ: Mapping[str, str] | None = field(repr=False)
     warnings: list[str]
 
 

@@ -6,12 +6,14 @@ import stat
 from pathlib import Path
 from typing import Any
 
+from config.guarded import could_be_secret_path
 from config.part import Surroundings, unusable
 from config.secret import Secret
 
 LARGEST_SECRET_FILE = 65_536
 NEEDED = '{ env = "NAME" } or { file = "path" }'
-_VARIABLE = re.compile(r"[A-Za-z_][A-Za-z0-9_]*")
+# Capital letters only: a token written here by mistake has small ones, and must not come back in a fault.
+_VARIABLE = re.compile(r"[A-Z_][A-Z0-9_]{0,99}")
 
 
 def resolve(raw: Any, around: Surroundings) -> Secret:
@@ -42,7 +44,11 @@ def origin(raw: Any) -> str:
 
 def _from_environment(name: str, around: Surroundings) -> Secret:
     if _VARIABLE.fullmatch(name) is None:
-        raise unusable("a text that can be no variable's name (not repeated)", "the name of a variable")
+        raise unusable(
+            "another text (not repeated)", "the name of a variable in capital letters, digits and underscores"
+        )
+    if around.environ is None:
+        return Secret(None, f"The environment variable {name}")
     found = around.environ.get(name)
     if not found:
         raise unusable(
@@ -52,7 +58,11 @@ def _from_environment(name: str, around: Surroundings) -> Secret:
 
 
 def _from_file(name: str, around: Surroundings) -> Secret:
+    if could_be_secret_path(name):
+        raise unusable("another text (not repeated)", "the path of a file")
     path = around.folder / name
+    if around.environ is None:
+        return Secret(None, f"The file {path}")
     needed = f"the file {path} with the secret in it"
     try:
         content = _read(path)
@@ -73,8 +83,15 @@ def _from_file(name: str, around: Surroundings) -> Secret:
 
 
 def _read(path: Path) -> bytes:
-    with path.open("rb") as file:
+    """Its bytes; opening a pipe that nobody writes to would wait for ever."""
+    with open(path, "rb", opener=_without_waiting) as file:
+        if not stat.S_ISREG(os.fstat(file.fileno()).st_mode):
+            raise OSError(f"{path} is no ordinary file")
         return file.read(LARGEST_SECRET_FILE + 1)
+
+
+def _without_waiting(path: str, flags: int) -> int:
+    return os.open(path, flags | getattr(os, "O_NONBLOCK", 0))
 
 
 def _warn_if_open(path: Path, around: Surroundings) -> None:

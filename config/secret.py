@@ -5,19 +5,34 @@ from typing import Any, NoReturn
 from pydantic import GetCoreSchemaHandler
 from pydantic_core import core_schema
 
+from config.errors import SecretNotRead
+
 MASK = "(secret)"
 
 
 class Secret:
     """A text that only `reveal` gives away: not print, not repr, not a dump, not a pickle."""
 
-    __slots__ = ("__text",)
+    __slots__ = ("__origin", "__text")
 
-    def __init__(self, text: str) -> None:
-        self.__text = text
+    def __init__(self, text: str | None, origin: str = "The secret") -> None:
+        self.__text, self.__origin = text, origin
+
+    @property
+    def is_read(self) -> bool:
+        """Whether it was looked up: commands that need no secret leave it where it is."""
+        return self.__text is not None
 
     def reveal(self) -> str:
-        """The text itself. Whoever calls this must keep it out of logs, errors and the database."""
+        """The text itself. Whoever calls this must keep it out of logs, errors and the database.
+
+        Raises
+        ------
+        SecretNotRead
+            If the settings were read without their secrets.
+        """
+        if self.__text is None:
+            raise SecretNotRead(self.__origin)
         return self.__text
 
     def __repr__(self) -> str:

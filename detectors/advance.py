@@ -113,9 +113,9 @@ def _one(
     checkpoint: Checkpoint, observation: Observation, rule: Rule
 ) -> tuple[Posterior, Checkpoint, Announcement | None]:
     if checkpoint.state is None:
-        state, step = first_count(checkpoint.model, observation)
+        state, step = first_count(checkpoint.model, (observation,))
     else:
-        state, step = next_count(checkpoint.state, observation)
+        state, step = next_count(checkpoint.state, (observation,))
     verdict = judge(state, step, checkpoint.memory, rule)
     said = posterior(state, step, observation, verdict.recent_shift)
     return said, Checkpoint(checkpoint.model, state, verdict.memory), verdict.announcement

@@ -2,6 +2,7 @@
 
 import copy
 from collections import OrderedDict
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
 
@@ -14,7 +15,7 @@ from detectors.jump_step import Map, jump_step
 from detectors.level_grid import LevelGrid
 from detectors.model import Model
 from detectors.observation import Observation
-from detectors.one_off import log_one_off
+from detectors.one_off import one_off_probability
 from detectors.wander_kernel import walk_matrix
 
 FloatArray = NDArray[np.float64]
@@ -59,23 +60,27 @@ class Likelihood:
         Share of it that the one-off component has.
     negative_binomial : ndarray, shape (rows,)
         Probability under the negative binomial component alone, not divided.
-    log_scale : float
-        Largest log probability over the rows.
+    log_scale : ndarray, shape (streams,)
+        Largest log probability over the rows of each stream.
     """
 
     probability: FloatArray
     one_off_share: FloatArray
     negative_binomial: FloatArray
-    log_scale: float
+    log_scale: FloatArray
 
 
 @dataclass(frozen=True)
 class Bench:
-    """Matrices and tables for one set of grids; shared by all states that stand on them."""
+    """Matrices and tables for one set of grids; shared by all states that stand on them.
+
+    Several streams may stand side by side; the pairs of one are neighbours, from `first_pair` on.
+    """
 
     model: Model
     dispersion: FloatArray
     wander: FloatArray
+    first_pair: IntArray
     grid: LevelGrid
     level: FloatArray
     row_dispersion: FloatArray
@@ -104,33 +109,70 @@ class Bench:
                 self._walks.popitem(last=False)
         return known
 
-    def likelihood(self, observation: Observation) -> Likelihood:
-        """Probability of a count at each node (missing counts have none)."""
-        count = observation.count if observation.count is not None else 0
-        mean = self.level * observation.exposure
-        if observation.relative_sd == 0.0:
-            log_nb = self.rows.log_probability(count, observation.exposure)
-        else:
-            dispersion = effective_dispersion(self.row_dispersion, observation.relative_sd)
-            log_nb = log_negative_binomial(count, mean, dispersion)
-        negative_binomial = np.exp(log_nb)
+    @cached_property
+    def rows_of_stream(self) -> IntArray:
+        """Number of rows of each stream."""
+        return np.add.reduceat(self.grid.size, self.first_pair)
+
+    @cached_property
+    def first_row(self) -> IntArray:
+        """First row of each stream."""
+        return self.grid.start[self.first_pair]
+
+    @cached_property
+    def pairs_of_stream(self) -> IntArray:
+        """Number of pairs of each stream."""
+        return np.diff(np.append(self.first_pair, self.dispersion.size))
+
+    @property
+    def streams(self) -> int:
+        """Number of streams that stand side by side."""
+        return int(self.first_pair.size)
+
+    def over_rows(self, values: FloatArray) -> FloatArray:
+        """One value a stream, for each of its rows; of a single stream, the value."""
+        return values[0] if values.size == 1 else np.repeat(values, self.rows_of_stream)
+
+    def over_pairs(self, values: FloatArray) -> FloatArray:
+        """One value a stream, for each of its pairs."""
+        return np.repeat(values, self.pairs_of_stream)
+
+    def likelihood(self, counts: Sequence[Observation]) -> Likelihood:
+        """Probability of each stream's count at each of its nodes (missing counts have none)."""
+        count = self.over_rows(np.array([float(one.count or 0) for one in counts]))
+        exposure = self.over_rows(np.array([one.exposure for one in counts]))
+        relative_sd = self.over_rows(np.array([one.relative_sd for one in counts]))
+        mean = self.level * exposure
+        negative_binomial = np.exp(self._log_ordinary(count, exposure, relative_sd, mean))
         share = self.model.one_off_share
-        if share == 0.0:
-            scale = float(log_nb.max())
-            return Likelihood(np.exp(log_nb - scale), np.zeros_like(mean), negative_binomial, scale)
-        one_off = share * np.exp(log_one_off(count, mean, self.model.one_off_tail))
+        one_off = share * one_off_probability(count, mean, self.model.one_off_tail)
         total = (1.0 - share) * negative_binomial + one_off
-        largest = float(total.max())
-        return Likelihood(total / largest, one_off / total, negative_binomial, float(np.log(largest)))
+        largest = np.maximum.reduceat(total, self.first_row)
+        return Likelihood(
+            total / self.over_rows(largest), one_off / total, negative_binomial, np.log(largest)
+        )
+
+    def _log_ordinary(
+        self, count: FloatArray, exposure: FloatArray, relative_sd: FloatArray, mean: FloatArray
+    ) -> FloatArray:
+        if self.streams == 1 and relative_sd == 0.0:
+            return self.rows.log_probability(int(count), float(exposure))
+        dispersion = self.row_dispersion
+        if np.any(relative_sd > 0.0):
+            dispersion = effective_dispersion(dispersion, relative_sd)
+        return log_negative_binomial(count, mean, dispersion)
 
 
-def bench_for(model: Model, dispersion: FloatArray, wander: FloatArray, grid: LevelGrid) -> Bench:
+def bench_for(
+    model: Model, dispersion: FloatArray, wander: FloatArray, first_pair: IntArray, grid: LevelGrid
+) -> Bench:
     """Prepare the matrices and tables of a set of grids."""
     level, row_dispersion = np.exp(grid.log_level), grid.spread(dispersion)
     return Bench(
         model=model,
         dispersion=dispersion,
         wander=wander,
+        first_pair=first_pair,
         grid=grid,
         level=level,
         row_dispersion=row_dispersion,

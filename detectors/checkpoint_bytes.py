@@ -53,7 +53,7 @@ def to_bytes(checkpoint: Checkpoint) -> bytes:
     facts: dict[str, Any] = {"memory": _memory_facts(checkpoint.memory)}
     arrays: list[bytes] = []
     if state is not None and state.early:
-        facts["early"] = [[o.position, o.count, o.exposure, o.relative_sd] for o in state.early]
+        facts["early"] = [[o.position, o.count, o.exposure, o.relative_sd] for (o,) in state.early]
     elif state is not None:
         facts["state"] = _state_facts(state)
         arrays = _state_arrays(state)
@@ -123,9 +123,9 @@ def _memory_facts(memory: Memory) -> list[Any]:
 
 
 def _refolded(model: Model, counts: list[Observation]) -> FilterState:
-    state, _ = first_count(model, counts[0])
+    state, _ = first_count(model, (counts[0],))
     for observation in counts[1:]:
-        state, _ = next_count(state, observation)
+        state, _ = next_count(state, (observation,))
     return state
 
 
@@ -133,7 +133,6 @@ def _state_facts(state: FilterState) -> dict[str, Any]:
     return {
         "counted": state.counted,
         "position": state.position,
-        "reference": state.reference,
         "pairs": int(state.log_weight.size),
         "slots": int(state.run_factor.size),
         "kind": state.weights.dtype.str,
@@ -177,7 +176,7 @@ def _state(model: Model, facts: dict[str, Any], data: bytes) -> FilterState:
     weights = np.zeros(cells, dtype=facts["kind"])
     weights[filled] = take(int(filled.sum()), facts["kind"])
     return FilterState(
-        bench=bench_for(model, dispersion, wander, grid),
+        bench=bench_for(model, dispersion, wander, np.zeros(1, dtype=np.int64), grid),
         counted=facts["counted"],
         position=facts["position"],
         log_weight=log_weight,
@@ -185,6 +184,6 @@ def _state(model: Model, facts: dict[str, Any], data: bytes) -> FilterState:
         run_factor=run_factor,
         pair_total=pair_total,
         slots=RunSlots(oldest, newest, position),
-        reference=facts["reference"],
+        reference=np.zeros(1),
         early=(),
     )

@@ -1,6 +1,7 @@
 """What the filter knows after a count, and what one count did."""
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -9,6 +10,7 @@ from detectors.bench import Bench, Likelihood
 from detectors.level_grid import LevelGrid
 from detectors.observation import Observation
 from detectors.posterior import Quantiles
+from detectors.quantiles import level_quantiles
 from detectors.run_slots import RunSlots
 
 FloatArray = NDArray[np.float64]
@@ -36,10 +38,10 @@ class FilterState:
         Total of each pair's weights.
     slots : RunSlots
         The runs.
-    reference : float
-        Upper quantile of the log level, for the spacing.
-    early : tuple of Observation
-        The counts so far, as long as there are few.
+    reference : ndarray, shape (streams,)
+        Log level for which the spacing was chosen while counts were few.
+    early : tuple of tuple of Observation
+        The counts so far, as long as there are few: for each position one a stream.
     """
 
     bench: Bench
@@ -50,8 +52,8 @@ class FilterState:
     run_factor: FloatArray
     pair_total: FloatArray
     slots: RunSlots
-    reference: float
-    early: tuple[Observation, ...]
+    reference: FloatArray
+    early: tuple[tuple[Observation, ...], ...]
 
     @property
     def grid(self) -> LevelGrid:
@@ -61,27 +63,32 @@ class FilterState:
 
 @dataclass(frozen=True)
 class Step:
-    """What one count did, before it is summarised.
+    """What one count (of each stream) did, before it is summarised.
 
     Attributes
     ----------
-    log_predictive : float
+    log_predictive : ndarray, shape (streams,)
         Log probability of the count given those before it.
     likelihood : Likelihood
         Its probability at each node.
+    grid : LevelGrid
+        The grids on which the step was made.
     row_mass : ndarray, shape (rows,)
-        Posterior probability of each node, pairs weighted.
-    level : Quantiles
-        Quantiles of the level.
-    run_mass : ndarray, shape (slots,)
+        Posterior probability of each node of its stream, pairs weighted.
+    run_mass : ndarray, shape (streams, slots)
         Posterior probability of each slot.
     slots : RunSlots
         The runs that the slots held, before old ones were merged.
     """
 
-    log_predictive: float
+    log_predictive: FloatArray
     likelihood: Likelihood
+    grid: LevelGrid
     row_mass: FloatArray
-    level: Quantiles
     run_mass: FloatArray
     slots: RunSlots
+
+    @cached_property
+    def level(self) -> Quantiles:
+        """Quantiles of the level, where one stream stands alone."""
+        return level_quantiles(self.grid, self.row_mass)

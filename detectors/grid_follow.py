@@ -1,5 +1,6 @@
-"""Keeping the level grids where the level is: wider before a far count, finer or coarser as the level moves."""
+"""Keeping the level grids where the level is: wider before a far count, finer or coarser as it moves."""
 
+from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -8,15 +9,17 @@ from numpy.typing import NDArray
 from detectors.bench import bench_for
 from detectors.filter_state import FilterState
 from detectors.grid_plan import (
+    NEEDED_REACH,
     REACH_OF_COUNT,
     REACH_OF_LEVEL,
     bounded_grid,
     count_span,
-    covers,
+    log_level_of,
     pair_spacing,
 )
 from detectors.level_grid import LevelGrid
 from detectors.observation import Observation
+from detectors.quantiles import upper_log_level
 from detectors.regrid import extended, respaced
 from detectors.spacing import LOWEST_LOG_LEVEL, reach
 
@@ -29,31 +32,45 @@ WORTH_SHRINKING = 0.75
 TOO_FINE = 2.9
 SCARCE_RUN = 1e-4
 STALE_FACTOR = 1e-3
+REFERENCE_SHARE = 0.99
 
 
-def followed(state: FilterState, observation: Observation) -> FilterState:
-    """Prepare the grids for a count: drop, crop and respace now and then, reach out when the count asks for it.
+def followed(state: FilterState, counts: Sequence[Observation]) -> FilterState:
+    """Prepare the grids for a count: drop, crop and respace now and then, reach out when the count asks.
 
     Nodes that are added start empty: every run alive has seen counts that make those levels negligible.
     """
     if state.counted % UPKEEP_EVERY == 0:
         state = _respaced(_cropped(without_dropped(state)))
-    return _reaching(state, observation)
+    return _reaching(state, counts)
+
+
+def covers(state: FilterState, counts: Sequence[Observation]) -> NDArray[np.bool_]:
+    """Whether each pair's grid spans the levels that its stream's count makes likely."""
+    grid = state.grid
+    lowest, highest = _span_of(state, counts, NEEDED_REACH)
+    return (grid.lowest <= lowest + grid.spacing) & (highest - grid.spacing <= grid.highest)
 
 
 def without_dropped(state: FilterState) -> FilterState:
     """The state without the pairs whose probability has become negligible."""
-    least = state.bench.model.accuracy.drop_below
-    kept = np.flatnonzero(np.exp(state.log_weight) >= least)
-    if kept.size == state.log_weight.size:
+    bench = state.bench
+    keep = np.exp(state.log_weight) >= bench.model.accuracy.drop_below
+    if keep.all():
         return state
-    bench, rows = state.bench, state.grid.rows_of_pairs(kept)
+    kept = np.flatnonzero(keep)
+    left = np.add.reduceat(keep.astype(np.int64), bench.first_pair)
+    first_pair = np.concatenate(([0], np.cumsum(left)[:-1])).astype(np.int64)
+    smaller = bench_for(
+        bench.model, bench.dispersion[kept], bench.wander[kept], first_pair, bench.grid.of_pairs(kept)
+    )
     log_weight = state.log_weight[kept]
+    log_total = np.log(np.add.reduceat(np.exp(log_weight), first_pair))
     return replace(
         state,
-        bench=bench_for(bench.model, bench.dispersion[kept], bench.wander[kept], bench.grid.of_pairs(kept)),
-        log_weight=log_weight - np.log(np.exp(log_weight).sum()),
-        weights=state.weights[rows],
+        bench=smaller,
+        log_weight=log_weight - smaller.over_pairs(log_total),
+        weights=state.weights[bench.grid.rows_of_pairs(kept)],
         pair_total=state.pair_total[kept],
     )
 
@@ -76,7 +93,8 @@ def _cropped(state: FilterState) -> FilterState:
 def _respaced(state: FilterState) -> FilterState:
     """Refine or coarsen where the level asks for it, and give up nodes that have emptied."""
     bench, grid = state.bench, state.grid
-    wanted = pair_spacing(bench.model, bench.dispersion, bench.wander, state.reference, _longest_run(state))
+    level, longest = bench.over_pairs(_upper_levels(state)), bench.over_pairs(_longest_runs(state))
+    wanted = pair_spacing(bench.model, bench.dispersion, bench.wander, level, longest)
     wrong = (grid.spacing > wanted * 1.05) | (grid.spacing < wanted / TOO_FINE)
     spacing = np.where(wrong, wanted, grid.spacing)
     lowest, highest = _needed_range(state)
@@ -90,12 +108,30 @@ def _respaced(state: FilterState) -> FilterState:
     return _moved(state, LevelGrid(new.spacing, first, size), wrong)
 
 
-def _longest_run(state: FilterState) -> int:
-    """Longest run, in counts, that still carries weight in some pair."""
+def _upper_levels(state: FilterState) -> FloatArray:
+    """An upper quantile of each stream's log level, for which its spacing is chosen; shape (streams,)."""
+    bench, grid = state.bench, state.grid
+    mass = (state.weights @ state.run_factor.astype(state.weights.dtype)).astype(np.float64)
+    mass *= grid.spread(np.exp(state.log_weight) / state.pair_total)
+    ends = np.append(bench.first_row, grid.rows)
+    return np.array(
+        [
+            upper_log_level(grid.log_level[begin:end], mass[begin:end], REFERENCE_SHARE)
+            for begin, end in zip(ends[:-1], ends[1:], strict=True)
+        ]
+    )
+
+
+def _longest_runs(state: FilterState) -> FloatArray:
+    """Longest run, in counts, that still carries weight in each stream; shape (streams,)."""
+    if not (state.bench.wander == 0.0).any():
+        return np.ones(state.bench.streams)
     by_slot = np.add.reduceat(state.weights, state.grid.start, axis=0) * state.run_factor
-    share = (np.exp(state.log_weight) / by_slot.sum(axis=1)) @ by_slot
-    heavy = state.slots.used & (share > SCARCE_RUN)
-    return int(state.counted - state.slots.oldest[heavy].min() + 1)
+    share = np.exp(state.log_weight) / by_slot.sum(axis=1)
+    run_mass = np.add.reduceat(share[:, None] * by_slot, state.bench.first_pair, axis=0)
+    heavy = state.slots.used & (run_mass > SCARCE_RUN)
+    oldest = np.where(heavy, state.slots.oldest, state.counted)
+    return (state.counted - oldest.min(axis=1) + 1).astype(np.float64)
 
 
 def _needed_range(state: FilterState) -> tuple[FloatArray, FloatArray]:
@@ -113,17 +149,22 @@ def _needed_range(state: FilterState) -> tuple[FloatArray, FloatArray]:
     return lowest, np.fmax(highest, middle + far)
 
 
-def _reaching(state: FilterState, observation: Observation) -> FilterState:
-    grid, dispersion = state.grid, state.bench.dispersion
-    far = state.bench.model.accuracy.reach
-    short = ~covers(grid, observation, dispersion, far)
+def _reaching(state: FilterState, counts: Sequence[Observation]) -> FilterState:
+    grid, short = state.grid, ~covers(state, counts)
     if not short.any():
         return state
-    low, high = count_span(observation, dispersion, REACH_OF_COUNT * far)
+    low, high = _span_of(state, counts, REACH_OF_COUNT)
     lowest = np.where(short, np.minimum(low, grid.lowest), grid.lowest)
     highest = np.where(short, np.maximum(high, grid.highest), grid.highest)
     new = bounded_grid(grid.spacing, lowest, highest)
     return _moved(state, new, new.spacing != grid.spacing)
+
+
+def _span_of(state: FilterState, counts: Sequence[Observation], sds: float) -> tuple[FloatArray, FloatArray]:
+    bench = state.bench
+    level = bench.over_pairs(np.array([log_level_of(one) for one in counts]))
+    is_zero = bench.over_pairs(np.array([float(one.count == 0) for one in counts]))
+    return count_span(level, is_zero, bench.dispersion, sds * bench.model.accuracy.reach)
 
 
 def _moved(state: FilterState, new: LevelGrid, respace: NDArray[np.bool_]) -> FilterState:
@@ -137,7 +178,7 @@ def _moved(state: FilterState, new: LevelGrid, respace: NDArray[np.bool_]) -> Fi
     bench = state.bench
     return replace(
         state,
-        bench=bench_for(bench.model, bench.dispersion, bench.wander, new),
+        bench=bench_for(bench.model, bench.dispersion, bench.wander, bench.first_pair, new),
         weights=weights,
         pair_total=np.add.reduceat(weights, new.start, axis=0) @ state.run_factor,
     )

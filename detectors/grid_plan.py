@@ -60,40 +60,40 @@ def first_grid(
     """
     if isinstance(model.jump, IndependentLevels):
         return _fixed_grid(model.jump, dispersion.size, model.accuracy.spacing)
-    middle = float(np.median([log_level_of(o) for o in counts]))
+    levels = np.array([log_level_of(one) for one in counts])
     far = model.accuracy.reach
-    lowest, highest = _span(middle, dispersion, REACH_OF_LEVEL * far)
-    for observation in counts:
-        low, high = count_span(observation, dispersion, REACH_OF_COUNT * far)
+    lowest, highest = _span(np.full(dispersion.size, np.median(levels)), dispersion, REACH_OF_LEVEL * far)
+    for level, one in zip(levels, counts, strict=True):
+        same = np.full(dispersion.size, level)
+        low, high = count_span(same, same * 0.0 + (one.count == 0), dispersion, REACH_OF_COUNT * far)
         lowest, highest = np.minimum(lowest, low), np.maximum(highest, high)
     spacing = pair_spacing(
-        model, dispersion, wander, reference_level(counts), max(len(counts), model.accuracy.early)
+        model, dispersion, wander, np.asarray(reference_level(counts)), max(len(counts), model.accuracy.early)
     )
     return bounded_grid(spacing, lowest, highest)
 
 
 def pair_spacing(
-    model: Model, dispersion: FloatArray, wander: FloatArray, log_level: float, longest_run: int
+    model: Model,
+    dispersion: FloatArray,
+    wander: FloatArray,
+    log_level: FloatArray,
+    longest_run: int | FloatArray,
 ) -> FloatArray:
-    """Spacing of each pair's grid at a level, shape (pairs,)."""
+    """Spacing of each pair's grid at its stream's level, shape (pairs,)."""
     variance = count_variance(log_level, dispersion)
     return on_ladder(widest_spacing(variance, wander, longest_run)) * model.accuracy.spacing
 
 
-def count_span(observation: Observation, dispersion: FloatArray, sds: float) -> tuple[FloatArray, FloatArray]:
-    """Lowest and highest log level that a count makes likely, each of shape (pairs,)."""
-    lowest, highest = _span(log_level_of(observation), dispersion, sds)
-    if observation.count == 0:
-        lowest = np.full_like(lowest, LOWEST_LOG_LEVEL)
-    return lowest, highest
+def count_span(
+    log_level: FloatArray, is_zero: FloatArray, dispersion: FloatArray, sds: float
+) -> tuple[FloatArray, FloatArray]:
+    """Lowest and highest log level that a count makes likely; all of shape (pairs,).
 
-
-def covers(
-    grid: LevelGrid, observation: Observation, dispersion: FloatArray, reach_factor: float
-) -> NDArray[np.bool_]:
-    """Whether each pair's grid spans the levels that a count makes likely."""
-    lowest, highest = count_span(observation, dispersion, NEEDED_REACH * reach_factor)
-    return (grid.lowest <= lowest + grid.spacing) & (highest - grid.spacing <= grid.highest)
+    A count of zero makes every low level likely.
+    """
+    lowest, highest = _span(log_level, dispersion, sds)
+    return np.where(is_zero > 0.0, LOWEST_LOG_LEVEL, lowest), highest
 
 
 def bounded_grid(spacing: FloatArray, lowest: FloatArray, highest: FloatArray) -> LevelGrid:
@@ -102,7 +102,7 @@ def bounded_grid(spacing: FloatArray, lowest: FloatArray, highest: FloatArray) -
     return grid_over(np.where(spacing < least, on_ladder(np.sqrt(2.0) * least), spacing), lowest, highest)
 
 
-def _span(log_level: float, dispersion: FloatArray, sds: float) -> tuple[FloatArray, FloatArray]:
+def _span(log_level: FloatArray, dispersion: FloatArray, sds: float) -> tuple[FloatArray, FloatArray]:
     far = reach(log_level, dispersion, sds)
     lowest = np.maximum(log_level - far, LOWEST_LOG_LEVEL)
     return lowest, np.maximum(log_level + far, lowest + 1.0)

@@ -129,7 +129,7 @@ def judge(state: FilterState, step: Step, memory: Memory, rule: Rule) -> Verdict
         (*memory.levels, step.level)[-keep:],
     )
     recent = recent_slots(step, state.counted, memory.last_announced, rule)
-    probability = float(min(step.run_mass[recent].sum(), 1.0))
+    probability = float(min(step.run_mass[0, recent].sum(), 1.0))
     if probability < rule.threshold or state.counted < rule.fewest_counts:
         return Verdict(probability, None, memory)
     told = _announcement(state, step, memory, recent, probability)
@@ -176,7 +176,7 @@ def region(positions: IntArray, mass: FloatArray, share: float) -> tuple[int, ..
 def _announcement(
     state: FilterState, step: Step, memory: Memory, recent: IntArray, probability: float
 ) -> Announcement:
-    mass = step.run_mass[recent]
+    mass = step.run_mass[0, recent]
     ago = state.counted - step.slots.newest[recent]
     positions = np.array(memory.positions)[len(memory.positions) - 1 - ago]
     best = int(np.lexsort((-positions, -mass))[0])

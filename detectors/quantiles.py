@@ -9,7 +9,6 @@ from detectors.posterior import Quantiles
 FloatArray = NDArray[np.float64]
 
 SHARES = np.array([0.05, 0.5, 0.95])
-REFERENCE_SHARE = 0.99
 
 
 def level_quantiles(grid: LevelGrid, row_mass: FloatArray) -> Quantiles:
@@ -25,17 +24,18 @@ def level_quantiles(grid: LevelGrid, row_mass: FloatArray) -> Quantiles:
     Returns
     -------
     Quantiles
-        In counts per unit of exposure.
+        In counts per unit of exposure. Between the nodes the distribution function is taken as straight.
     """
-    return quantiles_and_reference(grid, row_mass)[0]
-
-
-def quantiles_and_reference(grid: LevelGrid, row_mass: FloatArray) -> tuple[Quantiles, float]:
-    """The level's quantiles, and the upper quantile of the log level for which the spacing is chosen."""
     mass = row_mass[grid.ascending]
     running = np.cumsum(mass)
-    total = running[-1]
-    place = min(int(np.searchsorted(running, REFERENCE_SHARE * total)), running.size - 1)
     middle = running - 0.5 * mass
-    low, mid, high = np.exp(np.interp(SHARES * total, middle, grid.ascending_log_level)).tolist()
-    return Quantiles(low, mid, high), float(grid.ascending_log_level[place])
+    low, mid, high = np.exp(np.interp(SHARES * running[-1], middle, grid.ascending_log_level)).tolist()
+    return Quantiles(low, mid, high)
+
+
+def upper_log_level(log_level: FloatArray, row_mass: FloatArray, share: float) -> float:
+    """The node at which the running probability, by ascending level, first reaches a share."""
+    order = np.argsort(log_level, kind="stable")
+    running = np.cumsum(row_mass[order])
+    place = min(int(np.searchsorted(running, share * running[-1])), running.size - 1)
+    return float(log_level[order[place]])

@@ -33,7 +33,9 @@ class OneOffs:
         if not 0.0 <= self.share < 1.0:
             raise UnusableParameter("share", self.share, "at least 0 and below 1")
         if not 0.0 < self.least <= self.most < math.inf:
-            raise UnusableParameter("most", self.most, f"finite and at least the smallest factor, {self.least}")
+            raise UnusableParameter(
+                "most", self.most, f"finite and at least the smallest factor, {self.least}"
+            )
 
 
 NO_ONE_OFFS = OneOffs()
@@ -74,7 +76,7 @@ def simulate(
 
 def stepped(level: float, size: int, *, change_at: int, factor: float) -> FloatArray:
     """A level that is multiplied by a factor from one place on, shape (size,)."""
-    levels = np.full(size, level)
+    levels = np.full(size, float(level))
     levels[change_at:] *= factor
     return levels
 

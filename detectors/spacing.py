@@ -23,7 +23,7 @@ def count_variance(log_level: float | FloatArray, dispersion: FloatArray) -> Flo
     return np.exp(-np.asarray(log_level, dtype=np.float64)) + 1.0 / dispersion
 
 
-def widest_spacing(variance: FloatArray, wander: FloatArray, longest_run: int) -> FloatArray:
+def widest_spacing(variance: FloatArray, wander: FloatArray, longest_run: int | FloatArray) -> FloatArray:
     """Widest spacing of the log level that keeps the trapezoid rule's error negligible.
 
     Parameters
@@ -32,7 +32,7 @@ def widest_spacing(variance: FloatArray, wander: FloatArray, longest_run: int) -
         Variance of the log of one count.
     wander : ndarray, shape (pairs,)
         Standard deviation of the level's random walk per unit of position.
-    longest_run : int
+    longest_run : int, or ndarray of shape (pairs,)
         Longest run, in counts, that still carries weight.
 
     Returns
@@ -45,7 +45,7 @@ def widest_spacing(variance: FloatArray, wander: FloatArray, longest_run: int) -
     The error falls like exp(-2 pi^2 (sd / h)^2); sd is the posterior standard deviation: sqrt(v / n) for a
     level that stands still, and the steady state of the random walk seen through noise otherwise.
     """
-    still = np.sqrt(variance / max(longest_run, 1)) * STILL_PER_SD
+    still = np.sqrt(variance / np.maximum(longest_run, 1)) * STILL_PER_SD
     w2 = wander * wander
     steady = (np.sqrt(w2 * w2 + 4.0 * w2 * variance) - w2) / 2.0
     wandering = np.sqrt(steady) * WANDERING_PER_SD

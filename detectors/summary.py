@@ -16,7 +16,7 @@ def run_lengths(step: Step, counted: int) -> RunLengths:
     """The run-length posterior as groups, shortest first."""
     used = np.flatnonzero(step.slots.used)
     order = used[np.argsort(-step.slots.newest[used], kind="stable")]
-    mass = step.run_mass[order]
+    mass = step.run_mass[0, order]
     return RunLengths(
         shortest=tuple((counted - step.slots.newest[order] + 1).tolist()),
         longest=tuple((counted - step.slots.oldest[order] + 1).tolist()),
@@ -63,7 +63,7 @@ def posterior(state: FilterState, step: Step, observation: Observation, recent_s
         dispersion=_marginal(bench.dispersions, weight),
         wander=_marginal(bench.wanders, weight),
         one_off=float(np.clip(step.row_mass @ step.likelihood.one_off_share, 0.0, 1.0)),
-        log_predictive=step.log_predictive,
+        log_predictive=float(step.log_predictive[0]),
         pit=transform(bench, step, observation),
     )
 

@@ -1,5 +1,6 @@
 """The daemon: rounds on a schedule, deliveries beside them, and a clean end within a bound."""
 
+import logging
 import os
 import random
 import signal
@@ -8,7 +9,6 @@ from collections.abc import Callable
 from pathlib import Path
 
 from service.clock import Clock, SystemClock
-from service.deliver.attempt import Report
 from service.deliver.loop import Tools
 from service.deliver.workers import Deliverer
 from service.good_rounds import report_good_round
@@ -16,11 +16,10 @@ from service.logs import configure, log
 from service.round.plans import RoundPlan
 from service.schedule import Job, Schedule
 from service.wiring import Wired, wire
-from service.work import Bench, pass_for
+from service.work import Bench, catch_up, pass_for
 from storage.engine import Store, open_store
 from storage.migrate import upgrade
-from storage.rounds import FAILED, break_off_unfinished, list_rounds
-
+from storage.rounds import BROKEN_OFF, FAILED, break_off_unfinished, list_rounds
 
 
 def run(settings: Path) -> None:
@@ -30,86 +29,92 @@ def run(settings: Path) -> None:
         signal.signal(number, lambda *_: stop.set())
     wired = wire(settings, os.environ)
     configure(wired.log_form, wired.log_level)
-    watch(wired, SystemClock(), stop)
+    if not watch(wired, SystemClock(), stop):
+        # A thread cannot be stopped, and Python would wait for it. Every commit is whole, so leaving is safe.
+        logging.shutdown()
+        os._exit(0)
 
 
-def watch(wired: Wired, clock: Clock, stop: threading.Event) -> None:
-    """Watch the sources until the event is set. Takes up whatever an earlier process left undone."""
+def watch(wired: Wired, clock: Clock, stop: threading.Event) -> bool:
+    """Watch the sources until the event is set. Takes up whatever an earlier process left undone.
+
+    Gives whether everything that was under way ended within the bound; what did not is done again by the next
+    process.
+    """
     with open_store(wired.database) as store:
-        upgraded = upgrade(store)
-        with store.writing() as conn:
-            broken = break_off_unfinished(conn, now=clock.now())
-        log.info("started", database=store.place, schema=upgraded.after, sources=len(wired.rounds), broken=broken)
-        bench = Bench(store, clock, wired.takers, stop)
-        deliverer = Deliverer(_tools(store, clock), wired.outlets, _trouble)
-        schedule = Schedule()
-        busy = threading.Semaphore(len(wired.rounds) or 1)
-        for plan in wired.rounds:
-            action = _action(bench, plan, wired, deliverer)
-            every = clock.real_seconds(plan.every)
-            schedule.add(Job(plan.name, _counted(busy, action), every, _wait_seconds(store, plan, clock)))
+        _begin(store, wired, clock)
+        deliverer = Deliverer(Tools(store, clock, random.random), wired.outlets)
+        schedule = _schedule(Bench(store, clock, wired.takers, stop), wired, deliverer)
         deliverer.start()
         schedule.start()
         stop.wait()
         log.info("stopping", within_seconds=wired.stop_within_seconds)
         ends = clock.monotonic() + wired.stop_within_seconds
-        schedule.stop()
-        _wait_for(busy, len(wired.rounds), clock, ends)
-        deliverer.stop(max(ends - clock.monotonic(), 0.0))
-    log.info("stopped")
+        rounds_ended = schedule.stop(wired.stop_within_seconds)
+        sent = deliverer.stop(max(ends - clock.monotonic(), 0.0))
+    if rounds_ended and sent:
+        log.info("stopped")
+    else:
+        log.warning("stopped with work under way", rounds_ended=rounds_ended, deliveries_ended=sent)
+    return rounds_ended and sent
 
 
-def _action(bench: Bench, plan: RoundPlan, wired: Wired, deliverer: Deliverer) -> Callable[[], None]:
+def _begin(store: Store, wired: Wired, clock: Clock) -> None:
+    upgraded = upgrade(store)
+    with store.writing() as conn:
+        broken_off = break_off_unfinished(conn, now=clock.now())
+    log.info(
+        "started",
+        database=store.place,
+        schema=upgraded.after,
+        sources=len(wired.rounds),
+        outlets=len(wired.outlets),
+        rounds_broken_off=broken_off,
+    )
+
+
+def _schedule(bench: Bench, wired: Wired, deliverer: Deliverer) -> Schedule:
+    """Every source's rounds, and at the start what an earlier process read but did not fold or tell."""
+    schedule = Schedule()
+    for plan in wired.rounds:
+        one_at_a_time = threading.Lock()
+        backlog = _backlog(bench, plan, deliverer, one_at_a_time)
+        schedule.add_once(f"backlog of {plan.name}", backlog)
+        action = _one_pass(bench, plan, wired.good_rounds, deliverer, one_at_a_time)
+        every = bench.clock.real_seconds(plan.every)
+        schedule.add(Job(plan.name, action, every, _wait_seconds(bench.store, plan, bench.clock)))
+    return schedule
+
+
+def _backlog(bench: Bench, plan: RoundPlan, deliverer: Deliverer, mine: threading.Lock) -> Callable[[], None]:
+    def backlog() -> None:
+        with mine:
+            if not bench.stop.is_set():
+                catch_up(bench, plan)
+                deliverer.wake()
+
+    return backlog
+
+
+def _one_pass(
+    bench: Bench, plan: RoundPlan, good_rounds: str | None, deliverer: Deliverer, mine: threading.Lock
+) -> Callable[[], None]:
     def one_pass() -> None:
-        if bench.stop.is_set():
-            return
-        outcome = pass_for(bench, plan)
-        deliverer.wake()
-        if outcome.outcome != FAILED and wired.good_rounds is not None:
-            report_good_round(wired.good_rounds, plan.name, bench.clock.monotonic)
+        with mine:
+            if bench.stop.is_set():
+                return
+            outcome = pass_for(bench, plan)
+            deliverer.wake()
+        if outcome.outcome != FAILED and good_rounds is not None:
+            report_good_round(good_rounds, plan.name, bench.clock.monotonic)
 
     return one_pass
 
 
-def _counted(busy: threading.Semaphore, action: Callable[[], None]) -> Callable[[], None]:
-    """The action, so that the end can wait for those under way; whatever it raises is logged, not lost."""
-
-    def counted() -> None:
-        with busy:
-            try:
-                action()
-            except Exception:
-                log.exception("pass failed")
-
-    return counted
-
-
-def _wait_for(busy: threading.Semaphore, jobs: int, clock: Clock, ends: float) -> None:
-    for _ in range(jobs):
-        if not busy.acquire(timeout=max(ends - clock.monotonic(), 0.0)):
-            log.warning("a round is still under way; what it has not recorded will be done again")
-            return
-
-
 def _wait_seconds(store: Store, plan: RoundPlan, clock: Clock) -> float:
-    """Real seconds to a source's first round: none when one is overdue, as after downtime."""
+    """Real seconds to a source's first round: none when one is overdue, as after downtime or a crash."""
     with store.reading() as conn:
         last = list_rounds(conn, source=plan.name, limit=1)
-    if not last:
+    if not last or last[0].outcome == BROKEN_OFF:
         return 0.0
     return max(clock.real_seconds(last[0].started_utc + plan.every - clock.now()), 0.0)
-
-
-def _tools(store: Store, clock: Clock) -> Tools:
-    return Tools(store, clock, random.random, _heard)
-
-
-def _heard(report: Report) -> None:
-    facts = {"delivery": report.delivery_id, "outlet": report.outlet, "shift": report.shift_id}
-    log.info("delivery", outcome=report.outcome, status=report.status, error=report.error, **facts)
-
-
-def _trouble(outlet: str, error: Exception) -> None:
-    log.error("delivering failed", outlet=outlet, kind=type(error).__name__)
-
-

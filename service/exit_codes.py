@@ -36,6 +36,7 @@ _BY_ERROR: dict[str, Exit] = {
     "detectors.errors.UnusableParameter": Exit.WRONG_USE,
     "service.cli.errors.UnknownName": Exit.NOT_FOUND,
     "service.cli.errors.WrongUse": Exit.WRONG_USE,
+    "service.poll.UnknownSource": Exit.NOT_FOUND,
     "service.replay.errors.ReplayError": Exit.UNREADABLE,
     "service.round.calendar.UnusableInterval": Exit.WRONG_USE,
     "service.sources.errors.SourceUnreadable": Exit.UNREADABLE,
@@ -45,19 +46,12 @@ _BY_ERROR: dict[str, Exit] = {
 
 # Bases of errors that write their own sentence for a person; any other error is a fault of the program, and
 # its traceback is shown.
-_OWN_SENTENCES = frozenset(
-    {
-        *_BY_ERROR,
-        "detectors.errors.DetectorError",
-        "service.cli.errors.CommandError",
-        "service.errors.ServiceError",
-    }
-)
+_OWN_SENTENCES = (*_BY_ERROR, "detectors.errors.DetectorError", "service.cli.errors.CommandError")
 
 
 def named_errors() -> tuple[str, ...]:
-    """Full names of the error classes in the table."""
-    return tuple(_BY_ERROR)
+    """Full names of the error classes that are named here."""
+    return _OWN_SENTENCES
 
 
 def code_for(error: BaseException) -> Exit:

@@ -21,8 +21,8 @@ FORMS: tuple[Form, ...] = ("words", "json")
 LEVELS = ("debug", "info", "warning", "error")
 LONGEST_VALUE = 2000
 MOST_FRAMES = 12
-# What is shorter stands in too many harmless words to be blotted out.
-SHORTEST_SECRET = 6
+# What is shorter stands in too many harmless words to be blotted out; a short path is no secret.
+SHORTEST_SECRET, SHORTEST_PART = 6, 12
 BLOT = "(secret)"
 TURNING = frozenset("\u202a\u202b\u202c\u202d\u202e\u2066\u2067\u2068\u2069")
 OURS = "knickpoint"
@@ -72,8 +72,9 @@ def configure(form: Form, level: str, *, stream: TextIO | None = None) -> None:
 
 def hide(secrets: Iterable[str]) -> None:
     """Blot these texts out of every line from now on, and the telling parts of those that are addresses."""
-    for secret in secrets:
-        _hidden.update(part for part in _parts(secret) if len(part) >= SHORTEST_SECRET)
+    every = {*_hidden, *(part for secret in secrets for part in _parts(secret.strip()))}
+    # The longest first: one secret may hold another. In one step, since other threads may be writing lines.
+    _hidden[:] = sorted(every, key=len, reverse=True)
 
 
 def facts_of(record: logging.LogRecord) -> dict[str, object]:
@@ -101,20 +102,26 @@ class _Json(logging.Formatter):
         return json.dumps(facts_of(record), allow_nan=False)
 
 
-_hidden: set[str] = set()
+_hidden: list[str] = []
 
 
 def _parts(secret: str) -> Iterator[str]:
-    text = secret.strip()
-    yield from (text, quote(text, safe=""), quote(text), unquote(text))
-    if "://" not in text:
-        return
+    if len(secret) >= SHORTEST_SECRET:
+        yield from (secret, quote(secret, safe=""), quote(secret), unquote(secret))
+    if "://" in secret:
+        yield from _parts_of_address(secret)
+
+
+def _parts_of_address(text: str) -> Iterator[str]:
     try:
         address = urlsplit(text)
-        pieces = (address.password, address.path.strip("/"), address.query, address.fragment)
+        password, pieces = address.password or "", (address.path.strip("/"), address.query, address.fragment)
     except ValueError:
         return
-    for piece in filter(None, pieces):
+    long_enough = [piece for piece in pieces if len(piece) >= SHORTEST_PART]
+    if len(password) >= SHORTEST_SECRET:
+        long_enough.append(password)
+    for piece in long_enough:
         yield from (piece, unquote(piece))
 
 
@@ -149,10 +156,11 @@ def _plain(value: object) -> object:
 
 
 def _clean(text: str) -> str:
-    # The longest first: one secret may hold another.
-    for secret in sorted(_hidden, key=len, reverse=True):
+    for secret in _hidden:
         text = text.replace(secret, BLOT)
     clipped = text if len(text) <= LONGEST_VALUE else f"{text[:LONGEST_VALUE]} ..."
+    if clipped.isprintable():
+        return clipped
     return "".join(_visible(character) for character in clipped)
 
 

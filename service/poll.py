@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from pathlib import Path
 
 from service.clock import SystemClock
-from service.deliver.loop import Tools, deliver_due
+from service.deliver.loop import deliver_due
 from service.round.plans import RoundPlan
 from service.wiring import Wired, wire
 from service.work import Bench, pass_for
@@ -39,7 +39,7 @@ def poll_once(settings: Path, sources: Sequence[str]) -> tuple[Round, ...]:
         upgrade(store)
         bench = Bench(store, clock, wired.takers, stop)
         done = [pass_for(bench, plan).round_id for plan in plans]
-        deliver_due(Tools(store, clock, random.random, lambda report: None), wired.outlets, stop)
+        deliver_due(store, wired.outlets, clock, random.random)
         with store.reading() as conn:
             return tuple(get_round(conn, round_id) for round_id in done)
 

@@ -5,14 +5,12 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from service.clock import SystemClock
-from service.round.fold import bring_up
-from service.round.once import timing_of
+from service.round.again import fold_again
 from service.round.plans import RoundPlan, StreamPlan
 from service.wiring import wire
-from storage.checkpoints import drop_checkpoints
-from storage.engine import Store, open_existing_store
+from storage.engine import open_existing_store
 from storage.migrate import require_current
-from storage.streams import Stream, bump_epoch, get_stream
+from storage.streams import Stream, get_stream
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,7 +35,8 @@ def rebuild_stream(settings: Path, stream_id: str) -> Rebuilt:
         found = _plan_of(wired.rounds, stream)
         if found is None:
             return Rebuilt(stream_id, None, 0)
-        return _rebuilt(store, *found)
+        brought = fold_again(store, *found, SystemClock())
+    return Rebuilt(stream_id, brought.folded, len(brought.shifts))
 
 
 def _plan_of(rounds: tuple[RoundPlan, ...], stream: Stream) -> tuple[RoundPlan, StreamPlan] | None:
@@ -46,12 +45,3 @@ def _plan_of(rounds: tuple[RoundPlan, ...], stream: Stream) -> tuple[RoundPlan, 
             described = plan.stream_for(stream.split)
             return None if described is None else (plan, described)
     return None
-
-
-def _rebuilt(store: Store, plan: RoundPlan, stream: StreamPlan) -> Rebuilt:
-    with store.writing() as conn:
-        drop_checkpoints(conn, stream.id)
-        bump_epoch(conn, stream.id)
-    clock = SystemClock()
-    brought = bring_up(store, stream, clock, timing_of(store, plan, clock.now()))
-    return Rebuilt(stream.id, brought.folded, len(brought.shifts))

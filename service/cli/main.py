@@ -75,9 +75,8 @@ def run_command(arguments: list[str]) -> int:
     """Run one command line; errors become one sentence on standard error and an exit code."""
     try:
         require_own_packages()
-        knickpoint.main(arguments, prog_name="knickpoint", standalone_mode=False)
-    except click.exceptions.Exit as wanted:
-        return wanted.exit_code
+        # What a command hands to ctx.exit comes back from here; other commands return nothing.
+        return knickpoint.main(arguments, prog_name="knickpoint", standalone_mode=False) or Exit.GOOD
     except click.ClickException as error:
         error.show()
         return Exit.WRONG_USE
@@ -90,7 +89,6 @@ def run_command(arguments: list[str]) -> int:
             raise
         click.echo(f"knickpoint: {error}", err=True)
         return code_for(error)
-    return Exit.GOOD
 
 
 def _reader_went_away() -> int:

@@ -27,7 +27,6 @@ WAITS_SECONDS = (
     DAY,
 )
 MOST_ATTEMPTS = len(WAITS_SECONDS) + 1
-SHORTEST_WAIT_REFUSED_SECONDS = HOUR
 LONGEST_RETRY_AFTER_SECONDS = DAY
 JITTER = 0.2
 
@@ -68,5 +67,4 @@ def hold_seconds(outcome: Outcome) -> float | None:
 
 
 def _wait_seconds(outcome: Outcome, attempts: int) -> float:
-    shortest = SHORTEST_WAIT_REFUSED_SECONDS if outcome.kind is Kind.REFUSED else 0.0
-    return max(WAITS_SECONDS[max(attempts, 1) - 1], shortest, hold_seconds(outcome) or 0.0)
+    return max(WAITS_SECONDS[max(attempts, 1) - 1], hold_seconds(outcome) or 0.0)

@@ -1,4 +1,6 @@
-"""What delivering writes into the log: a line an attempt."""
+"""What delivering writes into the log: a line an attempt, and what is in its way."""
+
+from collections.abc import Sequence
 
 from service.deliver.attempt import GIVEN_UP, Report
 from service.logs import log
@@ -17,6 +19,15 @@ def log_report(report: Report) -> None:
         status=report.status,
         why=report.error,
         seconds=round(report.took_seconds, 3),
+    )
+
+
+def log_strays(outlets: Sequence[str], waiting: int) -> None:
+    """Deliveries that nobody sends."""
+    log.warning(
+        "deliveries wait for outlets that are not in the settings",
+        outlets=", ".join(outlets),
+        waiting=waiting,
     )
 
 

@@ -4,37 +4,40 @@ import threading
 from collections.abc import Callable, Sequence
 from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
-from datetime import timedelta
 
 from service.clock import Clock
 from service.deliver.attempt import GIVEN_UP, Report, attempt, claim_next, put_off
 from service.deliver.backoff import Chance
-from service.deliver.log_lines import log_report
+from service.deliver.log_lines import log_report, log_strays
 from service.outlets.outlet import Kind, Outlet
 from storage.engine import Store
-from storage.outbox import due_deliveries, give_up
+from storage.outbox import WAITING, list_deliveries
 
 MOST_IN_A_PASS = 200
 MOST_AT_ONCE = 32
 MOST_STRAYS = 1000
-STRAYS_GIVEN_UP_AFTER = timedelta(days=5)
 
 Watcher = Callable[[Report], None]
 
 
 @dataclass(frozen=True, slots=True)
 class Counts:
-    """What a pass did: deliveries that arrived, that are due again later, that are given up."""
+    """What a pass did: deliveries that arrived, that are due again later, that are given up.
+
+    `strays` wait for outlets that are no longer in the settings, until these come back.
+    """
 
     delivered: int = 0
     put_off: int = 0
     given_up: int = 0
+    strays: int = 0
 
     def __add__(self, other: "Counts") -> "Counts":
         return Counts(
             self.delivered + other.delivered,
             self.put_off + other.put_off,
             self.given_up + other.given_up,
+            self.strays + other.strays,
         )
 
 
@@ -58,7 +61,7 @@ def deliver_all(tools: Tools, outlets: Sequence[Outlet], stop: threading.Event) 
 
     When `stop` is set, attempts under way end (each within its outlet's `attempt_seconds`) and none begins.
     """
-    strays = Counts(given_up=give_up_strays(tools, [outlet.name for outlet in outlets]))
+    strays = Counts(strays=count_strays(tools.store, [outlet.name for outlet in outlets]))
     if not outlets:
         return strays
     with ThreadPoolExecutor(min(len(outlets), MOST_AT_ONCE), "deliver") as pool:
@@ -85,25 +88,17 @@ def deliver_outlet(tools: Tools, outlet: Outlet, stop: threading.Event) -> Count
     return counts
 
 
-def give_up_strays(tools: Tools, known: Sequence[str]) -> int:
-    """Give up what has long been due at outlets that are no longer in the settings; gives how many."""
-    due_by = tools.clock.now() - STRAYS_GIVEN_UP_AFTER
-    with tools.store.reading() as conn:
-        overdue = due_deliveries(conn, now=due_by, limit=MOST_STRAYS)
-    strays = [delivery for delivery in overdue if delivery.outlet not in known]
+def count_strays(store: Store, known: Sequence[str]) -> int:
+    """How many deliveries wait for outlets that are not in the settings; a log line names these outlets.
+
+    They are kept: an outlet may be missing by mistake, or have another name for a while.
+    """
+    with store.reading() as conn:
+        waiting = list_deliveries(conn, state=WAITING, limit=MOST_STRAYS)
+    strays = [delivery.outlet for delivery in waiting if delivery.outlet not in known]
     if strays:
-        with tools.store.writing() as conn:
-            for stray in strays:
-                give_up(conn, stray.id, why=_stray_sentence(stray.outlet))
+        log_strays(sorted(set(strays)), len(strays))
     return len(strays)
-
-
-def _stray_sentence(outlet: str) -> str:
-    days = STRAYS_GIVEN_UP_AFTER.days
-    return (
-        f'Outlet "{outlet}" has not been in the settings for {days} days. Put it back and send this delivery '
-        "again, or leave it."
-    )
 
 
 def _counted(report: Report) -> Counts:

@@ -4,7 +4,7 @@ import threading
 from collections.abc import Callable, Sequence
 
 from service.deliver.log_lines import log_trouble
-from service.deliver.loop import Tools, deliver_outlet, give_up_strays
+from service.deliver.loop import Tools, count_strays, deliver_outlet
 from service.outlets.outlet import Outlet
 from storage.outbox import next_due
 
@@ -33,7 +33,8 @@ class Deliverer:
         ]
 
     def start(self) -> None:
-        """Start the workers."""
+        """Start the workers; a log line says what waits for outlets that are not among theirs."""
+        count_strays(self._tools.store, self._names)
         for thread in self._threads:
             thread.start()
 
@@ -63,7 +64,6 @@ class Deliverer:
     def _pass(self, outlet: Outlet) -> float:
         """One pass; gives how long to sleep after it."""
         try:
-            give_up_strays(self._tools, self._names)
             deliver_outlet(self._tools, outlet, self._stop)
             return self._nap_seconds(outlet)
         except Exception as error:  # A worker that died would leave its outlet silent.

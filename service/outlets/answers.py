@@ -1,8 +1,9 @@
 """What an answer over HTTP means for a delivery. Pure.
 
-Only 2xx is success. 410 ends the delivery at once. Redirects are not followed. Other answers of the 4xx kind
-mean that people must mend something, so the delivery is tried again with long waits, and so are redirects;
-408, 425 and 429 only ask for another time, as all of 5xx does.
+Only 2xx is success. 410 ends the delivery at once. Redirects are not followed. Other answers of the 4xx kind,
+and redirects, mean that people may have to mend something; 408, 425 and 429 only ask for another time, as all
+of 5xx does. Both kinds are tried again on one schedule: a 404 may be a receiver that is being set up, and a
+mistake in the settings gets mended; an alert given up at the first such answer would be lost.
 """
 
 from collections.abc import Mapping

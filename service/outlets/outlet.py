@@ -9,8 +9,8 @@ from typing import Protocol
 class Kind(StrEnum):
     """What came of an attempt.
 
-    `REFUSED` is a failure that people must mend (a wrong address, a wrong password): it is tried again, with
-    long waits. `ENDED` is the receiver's last word.
+    `REFUSED` is a failure that people may have to mend (a wrong address, a wrong password); it is tried again
+    like any other. `ENDED` is the receiver's last word: it wants no more.
     """
 
     DELIVERED = "delivered"

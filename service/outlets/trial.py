@@ -8,7 +8,12 @@ from datetime import UTC, datetime
 from service.outlets.outlet import Kind, Outcome, Outlet
 
 TRIAL_TYPE = "trial"
-SENTENCE = "This is a trial of an outlet: nothing has moved, and nothing needs doing."
+SENTENCE = (
+    "This is a trial: nothing has moved, and nothing needs doing. An alert reads like this, here with an "
+    "invented show and invented figures: Example Show: the filtered level fell by about 40 %, from about "
+    "1,050 to about 640 counts per week, most probably from 2026-03-02 (90 %: between 2026-02-23 and "
+    "2026-03-09); probability of a recent shift 0.96."
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -24,17 +29,19 @@ class Tried:
 def try_outlet(outlet: Outlet, now: datetime) -> Tried:
     """Send one marked trial. Nothing is stored and nothing is tried again."""
     delivery_id = f"trial_{secrets.token_hex(12)}"
-    outcome = outlet.send(delivery_id, trial_body(outlet.name, now), now)
+    outcome = outlet.send(delivery_id, trial_body(outlet.name, delivery_id, now), now)
     return Tried(outlet.name, outcome.kind is Kind.DELIVERED, outcome.status, _sentence(outlet.name, outcome))
 
 
-def trial_body(outlet: str, now: datetime) -> bytes:
-    """The bytes of a trial, in the envelope of an alert."""
+def trial_body(outlet: str, delivery_id: str, now: datetime) -> bytes:
+    """The bytes of a trial; what it shares with an alert has the same names."""
     document = {
         "type": TRIAL_TYPE,
-        "schema_version": 1,
-        "timestamp": now.astimezone(UTC).isoformat().replace("+00:00", "Z"),
-        "data": {"sentence": SENTENCE, "outlet": outlet},
+        "schema": 1,
+        "id": delivery_id,
+        "composed": now.astimezone(UTC).isoformat(timespec="seconds").replace("+00:00", "Z"),
+        "outlet": outlet,
+        "sentence": SENTENCE,
     }
     return json.dumps(document, sort_keys=True, ensure_ascii=False).encode("utf-8", "replace")
 

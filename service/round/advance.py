@@ -46,7 +46,10 @@ def resume(folded: int, body: bytes | None, model: Model) -> tuple[int, Checkpoi
 
 
 def fold(begun: int, checkpoint: Checkpoint, observations: Sequence[Observation], rule: Rule) -> Folded:
-    """Fold the observations from place `begun` on, leaving a few checkpoints before the end."""
+    """Fold the observations from place `begun` on, leaving a few checkpoints before the end and one there.
+
+    The one at the end is left even where there was nothing to fold: what lay beyond it is gone then.
+    """
     posteriors: list[Posterior | None] = []
     announcements: list[Announcement] = []
     saved: list[Saved] = []
@@ -61,4 +64,4 @@ def fold(begun: int, checkpoint: Checkpoint, observations: Sequence[Observation]
 
 
 def _stops(begun: int, end: int) -> list[int]:
-    return [stop for stop in (*(end - back for back in STEPS_BACK), end) if stop > begun]
+    return [*(end - back for back in STEPS_BACK if end - back > begun), end]

@@ -5,16 +5,17 @@ from dataclasses import dataclass
 
 from sqlalchemy import Connection
 
-from detectors.advance import Checkpoint
+from detectors.advance import Checkpoint, start
 from detectors.errors import UnreadableCheckpoint
 from service.clock import Clock
 from service.round.advance import fold, resume
+from service.round.lateness import Downtime
 from service.round.observe import Observed, Stored, observe
 from service.round.plans import ReleaseShape, StreamPlan
-from service.round.record import Result, record
+from service.round.record import Result, is_recorded, record
 from service.round.ripen import repoint
 from service.round.shifts import Circumstances, shifts_of
-from storage.checkpoints import checkpoint_bytes, drop_checkpoints, list_checkpoints
+from storage.checkpoints import CheckpointMark, checkpoint_bytes, drop_checkpoints, list_checkpoints
 from storage.engine import Store
 from storage.errors import HeadMoved
 from storage.posteriors import newest_posterior
@@ -28,10 +29,10 @@ MOST_TRIES = 8
 
 @dataclass(frozen=True, slots=True)
 class Timing:
-    """What a fold must know of its source's rounds: how far it reaches, and what counts as late."""
+    """What a fold must know of its source's rounds: how far it reaches, and when it was not read."""
 
     source_reaches: datetime.date | datetime.datetime | None
-    late_before: datetime.datetime | None
+    downtimes: tuple[Downtime, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,7 +51,8 @@ class _Found:
     observed: Observed
     begun: int
     body: bytes | None
-    known_before: int
+    folded_before: int
+    up_to_date: bool
 
 
 def bring_up(store: Store, plan: StreamPlan, clock: Clock, timing: Timing) -> Brought:
@@ -76,58 +78,84 @@ def _try(store: Store, plan: StreamPlan, clock: Clock, timing: Timing) -> Brough
         found = _look(conn, plan, now, timing)
     if found is None:
         return Brought(0, 0, ())
-    observations = found.observed.observations
-    if found.begun == len(observations) and found.stream.fingerprint == plan.fingerprint:
+    if found.up_to_date:
         return Brought(0, found.observed.waiting, ())
-    begun, checkpoint = _resumed(store, plan, found)
-    folded = fold(begun, checkpoint, observations, plan.rule)
-    circumstances = Circumstances(
-        stream_id=plan.id,
-        first_read_utc=found.stream.first_read_utc,
-        known_before=found.known_before,
-        late_before=timing.late_before,
-        now=now,
-        fingerprint=plan.fingerprint,
-        reading_id=found.head.reading_id or None,
-    )
+    taken_up = _take_up(store, plan, found)
+    folded = fold(taken_up.begun, taken_up.checkpoint, found.observed.observations, plan.rule)
+    circumstances = _circumstances(plan, found, taken_up.known_before, timing.downtimes, now)
     shifts = shifts_of(folded.announcements, found.observed, circumstances)
     result = Result(plan.id, found.head, plan.fingerprint, found.observed, folded, shifts)
     with store.writing() as conn:
         new = record(conn, result, now)
-    return Brought(len(observations) - begun, found.observed.waiting, new)
+    return Brought(len(folded.posteriors), found.observed.waiting, new)
 
 
 def _look(conn: Connection, plan: StreamPlan, now: datetime.datetime, timing: Timing) -> _Found | None:
     stream = find_stream(conn, plan.id)
     if stream is None:
         return None
-    newest = newest_readings(conn, plan.id)
     ripe = ripe_readings(conn, plan.id) if isinstance(plan.shape, ReleaseShape) else ()
-    observed = observe(plan, Stored(newest, ripe), now, source_reaches=timing.source_reaches)
-    begun, body = 0, None
-    for mark in list_checkpoints(conn, plan.id, fingerprint=plan.fingerprint):
-        if mark.folded < len(observed.digests) and observed.digests[mark.folded] == mark.digest:
-            begun, body = mark.folded, checkpoint_bytes(conn, mark.id)
-            break
-    return _Found(stream, head(conn, plan.id), observed, begun, body, _known_before(conn, stream, plan))
+    stored = Stored(newest_readings(conn, plan.id), ripe)
+    observed = observe(plan, stored, now, source_reaches=timing.source_reaches)
+    marks = list_checkpoints(conn, plan.id, fingerprint=plan.fingerprint)
+    good = next((mark for mark in marks if _rests_on(mark, observed)), None)
+    return _Found(
+        stream=stream,
+        head=head(conn, plan.id),
+        observed=observed,
+        begun=0 if good is None else good.folded,
+        body=None if good is None else checkpoint_bytes(conn, good.id),
+        folded_before=_folded_before(conn, plan.id),
+        up_to_date=stream.fingerprint == plan.fingerprint and is_recorded(marks, observed),
+    )
 
 
-def _known_before(conn: Connection, stream: Stream, plan: StreamPlan) -> int:
-    """How many places had been folded under other settings or another version of the model."""
-    if stream.fingerprint in (None, plan.fingerprint):
-        return 0
-    last = newest_posterior(conn, plan.id)
+def _rests_on(mark: CheckpointMark, observed: Observed) -> bool:
+    return mark.folded < len(observed.digests) and observed.digests[mark.folded] == mark.digest
+
+
+def _circumstances(
+    plan: StreamPlan,
+    found: _Found,
+    known_before: int,
+    stretches: tuple[Downtime, ...],
+    now: datetime.datetime,
+) -> Circumstances:
+    return Circumstances(
+        stream_id=plan.id,
+        first_read_utc=found.stream.first_read_utc,
+        known_before=known_before,
+        downtimes=stretches,
+        now=now,
+        fingerprint=plan.fingerprint,
+        reading_id=found.head.reading_id or None,
+    )
+
+
+def _folded_before(conn: Connection, stream_id: str) -> int:
+    last = newest_posterior(conn, stream_id)
     return 0 if last is None else last.place + 1
 
 
-def _resumed(store: Store, plan: StreamPlan, found: _Found) -> tuple[int, Checkpoint]:
+@dataclass(frozen=True)
+class _TakenUp:
+    """Where a fold begins, and how many places had been folded under other settings or another model."""
+
+    begun: int
+    checkpoint: Checkpoint
+    known_before: int
+
+
+def _take_up(store: Store, plan: StreamPlan, found: _Found) -> _TakenUp:
+    same = found.stream.fingerprint in (None, plan.fingerprint)
     try:
-        return resume(found.begun, found.body, plan.model)
+        begun, checkpoint = resume(found.begun, found.body, plan.model)
     except UnreadableCheckpoint:
         # Checkpoints are derived: whatever is wrong with them, the readings are still there.
         with store.writing() as conn:
             drop_checkpoints(conn, plan.id)
-        return resume(0, None, plan.model)
+        return _TakenUp(0, start(plan.model), found.folded_before)
+    return _TakenUp(begun, checkpoint, 0 if same else found.folded_before)
 
 
 def _follow_changed_age(store: Store, plan: StreamPlan) -> None:
@@ -138,4 +166,4 @@ def _follow_changed_age(store: Store, plan: StreamPlan) -> None:
         stream = find_stream(conn, plan.id)
     if stream is not None and stream.fingerprint not in (None, plan.fingerprint):
         with store.writing() as conn:
-            repoint(conn, plan.id, plan.shape)
+            repoint(conn, plan.id, plan.shape, seen_utc=stream.last_seen_utc)

@@ -1,28 +1,32 @@
 """Stores what a document said, all of it in one short transaction, before anything computes on it."""
 
 import datetime
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 from sqlalchemy import Connection
 
-from service.round.keys import Sorted, ready_utc, sort_rows
-from service.round.plans import CalendarShape, ReleaseShape, RoundPlan, StreamPlan
-from service.sources.document import Document, KeptOut, Validators
-from storage.readings import keep_readings, newest_readings
-from storage.ripe import note_ripe
+from service.round.keys import sort_rows
+from service.round.plans import CalendarShape, RoundPlan, StreamPlan
+from service.round.ripen import keep_releases
+from service.sources.document import Document, KeptOut
+from storage.readings import Kept, NewReading, keep_readings
 from storage.rounds import KeptOutRow, RoundCounts, note_counts
-from storage.streams import SeenStream, see_streams
-from storage.validators import Validators as StoredValidators
-from storage.validators import keep_validators
+from storage.streams import SeenStream, list_streams, see_streams
+from storage.validators import Validators, keep_validators
 
 
 @dataclass(frozen=True, slots=True)
 class KeptDocument:
-    """What became of a document. `new_streams` are the ids of those met for the first time."""
+    """What became of a document.
+
+    `new_streams` are the ids of those met for the first time; `left_out` counts the rows of splits that the
+    settings leave out.
+    """
 
     counts: RoundCounts
     new_streams: tuple[str, ...]
+    left_out: int
 
 
 def keep(
@@ -31,38 +35,47 @@ def keep(
     """Store a document's rows as readings, with the streams they belong to and what was kept out."""
     sorted_rows = sort_rows(document.rows, plan, now)
     new = see_streams(conn, [_seen(stream) for stream, _ in sorted_rows.by_stream], now=now)
-    counts = _keep_rows(conn, sorted_rows, document.kept_out, round_id, now)
+    named = {stream.id for stream, _ in sorted_rows.by_stream}
+    # Of a stream that the document does not name, all that is known is absent now.
+    unnamed = [(stream, ()) for stream in planned_streams(conn, plan) if stream.id not in named]
+    kept = [
+        _keep_stream(conn, stream, rows, round_id, now) for stream, rows in (*sorted_rows.by_stream, *unnamed)
+    ]
+    used = sum(len(rows) for _, rows in sorted_rows.by_stream)
+    counts = _counts(kept, used, (*document.kept_out, *sorted_rows.kept_out))
     note_counts(conn, round_id, counts)
-    keep_validators(conn, plan.name, _stored(document.validators), now=now)
-    return KeptDocument(counts, new)
+    keep_validators(conn, plan.name, _validators(plan, document, counts), now=now)
+    return KeptDocument(counts, new, sorted_rows.left_out)
 
 
-def keep_unchanged(conn: Connection, streams: Iterable[StreamPlan], *, now: datetime.datetime) -> None:
-    """A document that is still the one we have says again what it said: releases ripen by it too."""
-    for stream in streams:
-        if isinstance(stream.shape, ReleaseShape):
-            counted = [one for one in newest_readings(conn, stream.id) if one.count is not None]
-            note_ripe(conn, stream.id, [one.key for one in counted if now >= ready_utc(stream.shape, one.at)])
+def planned_streams(conn: Connection, plan: RoundPlan) -> tuple[StreamPlan, ...]:
+    """The source's stored streams as the settings now describe them, without those they leave out."""
+    planned = (plan.stream_for(stream.split) for stream in list_streams(conn, source=plan.name))
+    return tuple({stream.id: stream for stream in planned if stream is not None}.values())
 
 
-def _keep_rows(
+def _keep_stream(
     conn: Connection,
-    sorted_rows: Sorted,
-    unreadable: tuple[KeptOut, ...],
+    stream: StreamPlan,
+    rows: Sequence[NewReading],
     round_id: int,
     now: datetime.datetime,
-) -> RoundCounts:
-    used = stored = unchanged = absent = held = 0
-    for stream, rows in sorted_rows.by_stream:
-        kept = keep_readings(conn, stream.id, rows, now=now, round_id=round_id)
-        if not isinstance(stream.shape, CalendarShape):
-            note_ripe(conn, stream.id, [row.key for row in rows if row.final and row.count is not None])
-        used += len(rows)
-        stored, unchanged = stored + kept.stored, unchanged + kept.unchanged
-        absent, held = absent + kept.absent, held + kept.held
-    kept_out = sorted((*unreadable, *sorted_rows.kept_out), key=lambda one: one.row)
-    shown = tuple(KeptOutRow(one.row, one.why, one.text) for one in kept_out)
-    return RoundCounts(used, stored, unchanged, absent, held=held, kept_out=shown)
+) -> Kept:
+    if isinstance(stream.shape, CalendarShape):
+        return keep_readings(conn, stream.id, rows, now=now, round_id=round_id)
+    return keep_releases(conn, stream.id, stream.shape, rows, now=now, round_id=round_id)
+
+
+def _counts(kept: Sequence[Kept], used: int, kept_out: Iterable[KeptOut]) -> RoundCounts:
+    in_order = sorted(kept_out, key=lambda one: one.row)
+    return RoundCounts(
+        rows_used=used,
+        stored=sum(one.stored for one in kept),
+        unchanged=sum(one.unchanged for one in kept),
+        absent=sum(one.absent for one in kept),
+        held=sum(one.held for one in kept),
+        kept_out=tuple(KeptOutRow(one.row, one.why, one.text) for one in in_order),
+    )
 
 
 def _seen(stream: StreamPlan) -> SeenStream:
@@ -70,5 +83,8 @@ def _seen(stream: StreamPlan) -> SeenStream:
     return SeenStream(stream.id, stream.source, stream.split, stream.title, stream.slate, shape)
 
 
-def _stored(validators: Validators) -> StoredValidators:
-    return StoredValidators(validators.etag, validators.last_modified, validators.fingerprint or "")
+def _validators(plan: RoundPlan, document: Document, counts: RoundCounts) -> Validators:
+    if counts.held:
+        # What was held back today must be met again tomorrow, even in an unchanged document.
+        return Validators(None, None, plan.about)
+    return Validators(document.validators.etag, document.validators.last_modified, plan.about)

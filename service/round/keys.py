@@ -5,11 +5,13 @@ from collections import defaultdict
 from collections.abc import Iterable
 from dataclasses import dataclass
 
-from service.round.calendar import Axis, at_of, end_of, key_of, position_of
+from service.round.calendar import at_of, end_of, key_of, position_of
 from service.round.plans import CalendarShape, ReleaseShape, RoundPlan, StreamPlan
 from service.sources.document import KeptOut, Row
 from service.sources.rows import keep_out_conflicts
 from storage.readings import NewReading
+
+At = datetime.date | datetime.datetime
 
 CALENDAR_FINAL_AFTER = datetime.timedelta(days=7)
 """Past this, a calendar count that still changes is kept once a day at most, unless it falls."""
@@ -17,7 +19,11 @@ CALENDAR_FINAL_AFTER = datetime.timedelta(days=7)
 
 @dataclass(frozen=True, slots=True)
 class Sorted:
-    """The rows of a document by stream, and those that were kept out while sorting."""
+    """The rows of a document by stream, and those that were kept out while sorting.
+
+    A stream of which all rows were kept out is there without any. `left_out` counts the rows of splits that
+    the settings leave out.
+    """
 
     by_stream: tuple[tuple[StreamPlan, tuple[NewReading, ...]], ...]
     kept_out: tuple[KeptOut, ...]
@@ -26,69 +32,64 @@ class Sorted:
 
 def sort_rows(rows: Iterable[Row], plan: RoundPlan, now: datetime.datetime) -> Sorted:
     """Sort a document's rows by stream and key; both rows of a key that comes twice are kept out."""
-    planned = [(row, plan.stream_for(row.split)) for row in rows]
-    mine = {row.number: stream for row, stream in planned if stream is not None}
-    wanted = [row for row, stream in planned if stream is not None]
-    placed = [row for row in wanted if _has_key(row, mine[row.number])]
-    keyless = [_without_key(row) for row in wanted if not _has_key(row, mine[row.number])]
-    sifted = keep_out_conflicts(placed, lambda row: (mine[row.number].id, key_of_row(row, mine[row.number])))
-    by_stream: dict[str, list[NewReading]] = defaultdict(list)
-    streams = {mine[row.number].id: mine[row.number] for row in wanted}
+    given = tuple(rows)
+    planned = {split: plan.stream_for(split) for split in {row.split for row in given}}
+    streams = {split: stream for split, stream in planned.items() if stream is not None}
+    wanted = [row for row in given if row.split in streams]
+    sifted = keep_out_conflicts(
+        wanted, lambda row: (streams[row.split].id, key_of_row(row, streams[row.split]))
+    )
+    by_id: dict[str, list[NewReading]] = defaultdict(list)
     for row in sifted.rows:
-        stream = mine[row.number]
-        by_stream[stream.id].append(_reading(row, stream, now))
+        by_id[streams[row.split].id].append(_reading(row, streams[row.split], now))
+    in_order = sorted({stream.id: stream for stream in streams.values()}.items())
     return Sorted(
-        tuple((streams[name], tuple(by_stream[name])) for name in sorted(streams)),
-        (*keyless, *sifted.kept_out),
-        len(planned) - len(wanted),
+        tuple((stream, tuple(by_id[name])) for name, stream in in_order),
+        sifted.kept_out,
+        len(given) - len(wanted),
     )
 
 
 def key_of_row(row: Row, stream: StreamPlan) -> str:
-    """The stable key of a row: the start of its interval, or the release's id."""
+    """The stable key of a row: the start of its interval, or the release's id (without one: its date)."""
     if isinstance(stream.shape, CalendarShape):
         return key_of(stream.shape.axis, position_of(stream.shape.axis, row.at))
-    return row.release if row.release is not None else row.at.isoformat()
+    if row.release is not None:
+        return row.release
+    # In UTC, so that a source that writes the same instant with another offset names the same release.
+    at = row.at.astimezone(datetime.UTC) if isinstance(row.at, datetime.datetime) else row.at
+    return at.isoformat()
 
 
-def ready_utc(
-    shape: CalendarShape | ReleaseShape, at: datetime.date | datetime.datetime
-) -> datetime.datetime:
+def ready_utc(shape: CalendarShape | ReleaseShape, at: At) -> datetime.datetime:
     """The instant from which a count can be complete: its interval over, or its release at its final age."""
     if isinstance(shape, CalendarShape):
         return end_of(shape.axis, position_of(shape.axis, at)) + shape.settling
     return came_out_utc(shape, at) + shape.final
 
 
-def came_out_utc(shape: ReleaseShape, at: datetime.date | datetime.datetime) -> datetime.datetime:
-    """The instant at which a release came out; a day stands for its first moment in the stream's zone."""
+def began_utc(shape: CalendarShape | ReleaseShape, at: At) -> datetime.datetime:
+    """The first moment of a day in the stream's zone; an instant is itself."""
     if isinstance(at, datetime.datetime):
         return at.astimezone(datetime.UTC)
-    return datetime.datetime(at.year, at.month, at.day, tzinfo=shape.zone).astimezone(datetime.UTC)
+    zone = shape.axis.zone if isinstance(shape, CalendarShape) else shape.zone
+    return datetime.datetime(at.year, at.month, at.day, tzinfo=zone).astimezone(datetime.UTC)
 
 
-def axis_at(axis: Axis, at: datetime.date | datetime.datetime) -> datetime.date | datetime.datetime:
-    """The start of the interval that a day or an instant falls into."""
-    return at_of(axis, position_of(axis, at))
-
-
-def _has_key(row: Row, stream: StreamPlan) -> bool:
-    return isinstance(stream.shape, CalendarShape) or row.release != ""
-
-
-def _without_key(row: Row) -> KeptOut:
-    return KeptOut(row.number, "its release id is empty; needed is one id a release.", row.at.isoformat())
+def came_out_utc(shape: ReleaseShape, at: At) -> datetime.datetime:
+    """The instant at which a release came out; a day stands for its first moment in the stream's zone."""
+    return began_utc(shape, at)
 
 
 def _reading(row: Row, stream: StreamPlan, now: datetime.datetime) -> NewReading:
-    calendar = isinstance(stream.shape, CalendarShape)
-    at = axis_at(stream.shape.axis, row.at) if isinstance(stream.shape, CalendarShape) else row.at
+    shape = stream.shape
+    calendar = isinstance(shape, CalendarShape)
     grace = CALENDAR_FINAL_AFTER if calendar else datetime.timedelta(0)
     return NewReading(
         key=key_of_row(row, stream),
-        at=at,
+        at=at_of(shape.axis, position_of(shape.axis, row.at)) if isinstance(shape, CalendarShape) else row.at,
         count=row.count,
         title=row.title,
         exposure=row.exposure,
-        final=now >= ready_utc(stream.shape, row.at) + grace,
+        final=now >= ready_utc(shape, row.at) + grace,
     )

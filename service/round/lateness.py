@@ -2,22 +2,47 @@
 
 import datetime
 from collections.abc import Sequence
+from dataclasses import dataclass
 
+from service.round.observe import Place
 from storage.rounds import GOOD, NOTHING_NEW, Round
 
 ROUNDS_MISSED = 2
 
 
-def late_before(
-    rounds: Sequence[Round], every: datetime.timedelta, now: datetime.datetime
-) -> datetime.datetime | None:
-    """The instant before which a count was complete too long ago to be told as fresh; None if none was.
+@dataclass(frozen=True, slots=True)
+class Downtime:
+    """From `since` on nobody read the source, though rounds were due.
 
-    `rounds` are the source's newest rounds, newest first. Counts are late when the good round before the
-    last lies so far back that rounds were missed in between: it is told late, and says so.
+    What was complete before `late_before` and came to be known only after `since` is told late.
     """
-    reached = [one.started_utc for one in rounds if one.outcome in (GOOD, NOTHING_NEW)]
+
+    since: datetime.datetime
+    late_before: datetime.datetime
+
+
+def downtimes(
+    rounds: Sequence[Round], every: datetime.timedelta, now: datetime.datetime
+) -> tuple[Downtime, ...]:
+    """The stretches without a good round in which rounds were missed.
+
+    `rounds` are the source's newest rounds, newest first. The stretch up to now counts too: what was read
+    before a crash may be folded only after it.
+    """
     limit = every * ROUNDS_MISSED
-    if len(reached) < 2 or now - reached[1] <= limit:
-        return None
-    return now - limit
+    reached = [one.started_utc for one in rounds if one.outcome in (GOOD, NOTHING_NEW)]
+    ends = [now, *reached][: len(reached)]
+    return tuple(
+        Downtime(since, until - limit)
+        for since, until in zip(reached, ends, strict=True)
+        if until - since > limit
+    )
+
+
+def is_late(place: Place, stretches: Sequence[Downtime]) -> bool:
+    """Whether a count was complete long before anybody looked, for want of rounds.
+
+    A source that lags behind, or corrects an old count, makes nothing late.
+    """
+    known = place.ready_utc if place.read_utc is None else max(place.ready_utc, place.read_utc)
+    return any(known >= one.since and place.ready_utc < one.late_before for one in stretches)

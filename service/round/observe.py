@@ -2,7 +2,7 @@
 
 import datetime
 import hashlib
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 from detectors.observation import Observation
@@ -19,13 +19,17 @@ MOST_FILLED = 100_000
 
 @dataclass(frozen=True, slots=True)
 class Place:
-    """What stands at one place of a stream: its key and date, and the reading it rests on (None: absent)."""
+    """What stands at one place of a stream: its key and date, and the reading it rests on (None: absent).
+
+    From `ready_utc` on the count can be complete; at `read_utc` it was read (None: absent).
+    """
 
     key: str
     at: At
     title: str | None
     reading_id: int | None
     ready_utc: datetime.datetime
+    read_utc: datetime.datetime | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -33,13 +37,24 @@ class Observed:
     """A stream's observations in order, with the place of each and the digest of each beginning.
 
     `digests[n]` is the digest of the first n observations, so it has one entry more than there are. `waiting`
-    counts the readings that are not yet counted: an open interval, a release younger than its final age.
+    counts the keys that are not yet counted: an open interval, a release younger than its final age, or one
+    that was not read since it came to that age.
     """
 
     observations: tuple[Observation, ...]
     places: tuple[Place, ...]
     digests: tuple[str, ...]
     waiting: int
+
+
+class OtherIntervals(ValueError):
+    """Stored counts cover other intervals than the settings now say, so they cannot stand in one series."""
+
+    def __init__(self, stream_id: str, key: str, interval: str) -> None:
+        super().__init__(
+            f"Stream {stream_id!r} holds a count for {key!r}, which is no {interval} of its settings now. "
+            "Put the former interval and zone back, or rename the source, so that its streams begin anew."
+        )
 
 
 class TooManyAbsent(ValueError):
@@ -67,8 +82,16 @@ def observe(
 
     A calendar count is the newest one read. A release's count is the one that held when it was first read at
     its final age, so that all releases are compared at one age and one that goes on growing slowly stays as
-    it was. `source_reaches` is the newest date of the whole source: up to there an absent interval can be
-    taken for zero; beyond it the source may just be behind.
+    it was; its date and title are the newest. One that was not read since it came to that age keeps its place
+    as a missing count if later ones are known, and waits if not. `source_reaches` is the newest date of the
+    whole source: up to there an absent interval can be taken for zero; beyond it the source may be behind.
+
+    Raises
+    ------
+    OtherIntervals
+        If the readings were stored for another interval or zone.
+    TooManyAbsent
+        If filling the absent intervals would not end.
     """
     if isinstance(plan.shape, CalendarShape):
         return _calendar(plan, plan.shape, stored.newest, now, source_reaches)
@@ -82,54 +105,80 @@ def _calendar(
     now: datetime.datetime,
     reaches: At | None,
 ) -> Observed:
-    axis = shape.axis
-    by_position = {position_of(axis, reading.at): reading for reading in readings}
+    by_position = _by_position(plan.id, shape, readings)
     if not by_position:
         return _observed([], [], 0)
-    first, newest = min(by_position), max(by_position)
-    over = last_over(axis, now - shape.settling)
-    end = newest if reaches is None else max(newest, position_of(axis, reaches))
-    end = min(end, over) if shape.absent == "zero" else min(newest, over)
-    if end - first + 1 - len(by_position) > MOST_FILLED:
-        raise TooManyAbsent(plan.id, end - first + 1 - len(by_position))
-    observations, places = [], []
-    for position in range(first, end + 1):
-        reading = by_position.get(position)
-        observations.append(_calendar_observation(shape, position, reading))
-        places.append(_calendar_place(shape, position, reading))
-    return _observed(observations, places, sum(position > over for position in by_position))
+    over = last_over(shape.axis, now - shape.settling)
+    first, end = min(by_position), min(_last_known(shape, by_position, reaches), over)
+    absent = end - first + 1 - sum(position <= end for position in by_position)
+    if absent > MOST_FILLED:
+        raise TooManyAbsent(plan.id, absent)
+    positions = range(first, end + 1)
+    return _observed(
+        [_calendar_observation(shape, position, by_position.get(position)) for position in positions],
+        [_calendar_place(shape, position, by_position.get(position)) for position in positions],
+        sum(position > over for position in by_position),
+    )
+
+
+def _by_position(stream_id: str, shape: CalendarShape, readings: Sequence[Reading]) -> dict[int, Reading]:
+    by_position = {}
+    for reading in readings:
+        position = position_of(shape.axis, reading.at)
+        if reading.key != key_of(shape.axis, position):
+            raise OtherIntervals(stream_id, reading.key, str(shape.axis.interval))
+        by_position[position] = reading
+    return by_position
+
+
+def _last_known(shape: CalendarShape, known: Iterable[int], reaches: At | None) -> int:
+    newest = max(known)
+    if reaches is None or shape.absent != "zero":
+        return newest
+    return max(newest, position_of(shape.axis, reaches))
 
 
 def _calendar_observation(shape: CalendarShape, position: int, reading: Reading | None) -> Observation:
     if reading is None:
         return Observation(position, 0 if shape.absent == "zero" else None)
-    return Observation(position, reading.count, reading.exposure or 1.0)
+    return Observation(position, reading.count, _exposure(reading))
 
 
 def _calendar_place(shape: CalendarShape, position: int, reading: Reading | None) -> Place:
     at = at_of(shape.axis, position)
-    key = key_of(shape.axis, position)
+    key, ready = key_of(shape.axis, position), ready_utc(shape, at)
     if reading is None:
-        return Place(key, at, None, None, ready_utc(shape, at))
-    return Place(key, at, reading.title, reading.id, ready_utc(shape, at))
+        return Place(key, at, None, None, ready, None)
+    return Place(key, at, reading.title, reading.id, ready, reading.read_utc)
 
 
 def _releases(shape: ReleaseShape, stored: Stored, now: datetime.datetime) -> Observed:
     ripe = {reading.key: reading for reading in stored.ripe}
     ordered = sorted(stored.newest, key=lambda reading: (came_out_utc(shape, reading.at), reading.key))
-    out = [ripe.get(reading.key, reading) for reading in ordered if ready_utc(shape, reading.at) <= now]
-    observations = [_release_observation(place, reading, ripe) for place, reading in enumerate(out)]
-    places = [
-        Place(reading.key, reading.at, reading.title, reading.id, ready_utc(shape, reading.at))
-        for reading in out
-    ]
-    return _observed(observations, places, len(ordered) - len(out))
+    of_age = [reading for reading in ordered if ready_utc(shape, reading.at) <= now]
+    while of_age and of_age[-1].key not in ripe:
+        of_age.pop()
+    return _observed(
+        [_release_observation(place, ripe.get(reading.key)) for place, reading in enumerate(of_age)],
+        [_release_place(shape, reading, ripe.get(reading.key)) for reading in of_age],
+        sum(reading.key not in ripe or ready_utc(shape, reading.at) > now for reading in ordered),
+    )
 
 
-def _release_observation(place: int, reading: Reading, ripe: Mapping[str, Reading]) -> Observation:
-    # Old enough but not read since: until the next round its count at the final age is not known.
-    count = reading.count if reading.key in ripe else None
-    return Observation(place, count, reading.exposure or 1.0)
+def _release_observation(place: int, ripe: Reading | None) -> Observation:
+    # Old enough but not read since: its count at the final age is not known.
+    return Observation(place, None) if ripe is None else Observation(place, ripe.count, _exposure(ripe))
+
+
+def _release_place(shape: ReleaseShape, newest: Reading, ripe: Reading | None) -> Place:
+    ready = ready_utc(shape, newest.at)
+    if ripe is None:
+        return Place(newest.key, newest.at, newest.title, None, ready, None)
+    return Place(newest.key, newest.at, newest.title, ripe.id, ready, ripe.read_utc)
+
+
+def _exposure(reading: Reading) -> float:
+    return 1.0 if reading.exposure is None else reading.exposure
 
 
 def _observed(observations: list[Observation], places: list[Place], waiting: int) -> Observed:

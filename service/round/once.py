@@ -4,22 +4,27 @@ import datetime
 import threading
 from collections.abc import Iterable
 from dataclasses import dataclass
+from operator import itemgetter
+
+from sqlalchemy import Connection
 
 from service.clock import Clock
 from service.logs import log
 from service.round.fold import Brought, Timing, bring_up
-from service.round.keep import keep, keep_unchanged
-from service.round.lateness import late_before
-from service.round.plans import RoundPlan, StreamPlan
+from service.round.keep import KeptDocument, keep, planned_streams
+from service.round.keys import began_utc
+from service.round.lateness import downtimes
+from service.round.plans import CalendarShape, RoundPlan
+from service.round.ripen import came_to_age
 from service.sources.document import Document, Validators
 from service.sources.errors import SourceUnreadable
 from service.sources.open_source import Tools, read_document
 from service.sources.plans import fingerprint
 from storage.engine import Store
-from storage.readings import newest_at
+from storage.errors import StoreError
+from storage.readings import newest_readings
 from storage.rounds import FAILED, GOOD, NOTHING_NEW, begin_round, end_round, list_rounds
 from storage.shifts import Shift
-from storage.streams import list_streams
 from storage.validators import find_validators
 
 ROUNDS_LOOKED_AT = 50
@@ -40,7 +45,7 @@ def read_and_keep(store: Store, plan: RoundPlan, clock: Clock) -> RoundOutcome:
         round_id = begin_round(conn, plan.name, now=clock.now())
     try:
         outcome = _read_and_keep(store, plan, clock, round_id)
-    except SourceUnreadable as error:
+    except (SourceUnreadable, StoreError) as error:
         outcome = RoundOutcome(round_id, FAILED, str(error))
     except Exception as error:  # A round must not end the daemon; the record says what happened.
         log.exception("round failed", source=plan.name, round=round_id)
@@ -59,8 +64,10 @@ def bring_up_source(
     store: Store, plan: RoundPlan, clock: Clock, stop: threading.Event
 ) -> tuple[tuple[str, Brought], ...]:
     """Fold the backlog of a source's streams, stopping between streams when asked to."""
-    timing, streams = timing_of(store, plan, clock.now()), _streams(store, plan)
-    brought = []
+    timing = timing_of(store, plan, clock.now())
+    with store.reading() as conn:
+        streams = planned_streams(conn, plan)
+    brought: list[tuple[str, Brought]] = []
     for stream in streams:
         if stop.is_set():
             log.info("folding stopped", source=plan.name, done=len(brought), left=len(streams) - len(brought))
@@ -76,34 +83,50 @@ def bring_up_source(
 
 
 def _read_and_keep(store: Store, plan: RoundPlan, clock: Clock, round_id: int) -> RoundOutcome:
-    with store.reading() as conn:
-        known = find_validators(conn, plan.name, about=fingerprint(plan.source))
-    validators = Validators(known.etag, known.last_modified, known.about) if known else Validators()
+    validators = _usable_validators(store, plan, clock.now())
     document: Document = read_document(plan.source, validators, tools=Tools(clock.monotonic))
-    now = clock.now()
     if document.not_modified:
-        with store.writing() as conn:
-            keep_unchanged(conn, _streams(store, plan), now=now)
         return RoundOutcome(round_id, NOTHING_NEW, "The source says that its document is unchanged.")
     with store.writing() as conn:
-        kept = keep(conn, plan, document, round_id=round_id, now=now)
-    return RoundOutcome(round_id, GOOD if kept.counts.stored else NOTHING_NEW)
+        kept = keep(conn, plan, document, round_id=round_id, now=clock.now())
+    return RoundOutcome(round_id, GOOD if kept.counts.stored else NOTHING_NEW, _left_out(kept))
 
 
-def _streams(store: Store, plan: RoundPlan) -> tuple[StreamPlan, ...]:
-    """The source's known streams, as the settings now describe them; those left out by now are not folded."""
+def _usable_validators(store: Store, plan: RoundPlan, now: datetime.datetime) -> Validators:
+    """Those of the last document, unless something can be learned even from an unchanged one."""
     with store.reading() as conn:
-        splits = [stream.split for stream in list_streams(conn, source=plan.name)]
-    planned = (plan.stream_for(split) for split in splits)
-    return tuple(stream for stream in planned if stream is not None)
+        known = find_validators(conn, plan.name, about=plan.about)
+        if known is None or came_to_age(conn, planned_streams(conn, plan), now):
+            return Validators()
+    return Validators(known.etag, known.last_modified, fingerprint(plan.source))
+
+
+def _left_out(kept: KeptDocument) -> str | None:
+    if not kept.left_out:
+        return None
+    return f"Rows of streams that the settings leave out: {kept.left_out}."
 
 
 def timing_of(store: Store, plan: RoundPlan, now: datetime.datetime) -> Timing:
-    """How far the source's readings reach, and what would be told late."""
+    """How far the source's counts reach by now, and when it was not read though it should have been."""
     with store.reading() as conn:
-        reaches = newest_at(conn, plan.name)
+        reaches = _reaches(conn, plan, now)
         rounds = list_rounds(conn, source=plan.name, limit=ROUNDS_LOOKED_AT)
-    return Timing(reaches, late_before(rounds, plan.every, now))
+    return Timing(reaches, downtimes(rounds, plan.every, now))
+
+
+def _reaches(
+    conn: Connection, plan: RoundPlan, now: datetime.datetime
+) -> datetime.date | datetime.datetime | None:
+    """The newest date of any calendar stream that has begun: a row put in ahead proves nothing."""
+    begun = (
+        (began_utc(stream.shape, one.at), one.at)
+        for stream in planned_streams(conn, plan)
+        if isinstance(stream.shape, CalendarShape) and stream.shape.absent == "zero"
+        for one in newest_readings(conn, stream.id)
+    )
+    newest = max((pair for pair in begun if pair[0] <= now), default=None, key=itemgetter(0))
+    return None if newest is None else newest[1]
 
 
 def _log_shifts(shifts: Iterable[Shift]) -> None:

@@ -9,7 +9,7 @@ from zoneinfo import ZoneInfo
 from detectors.judge import Rule
 from detectors.model import Model
 from service.round.calendar import Axis
-from service.sources.plans import SourcePlan
+from service.sources.plans import SourcePlan, fingerprint
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,9 +52,19 @@ class StreamPlan:
 
 @dataclass(frozen=True, slots=True)
 class RoundPlan:
-    """One source: where it is read, how often, and which stream a split value means (None: left out)."""
+    """One source: where it is read, how often, and which stream a split value means (None: left out).
+
+    `sorting` differs whenever the rows of the same document would be sorted otherwise: into other streams, or
+    under other keys. A document that is said to be unchanged is passed over only while it stays the same.
+    """
 
     name: str
     source: SourcePlan
     every: datetime.timedelta
     stream_for: Callable[[str | None], StreamPlan | None]
+    sorting: str = ""
+
+    @property
+    def about(self) -> str:
+        """What a document's validators are good for."""
+        return f"{fingerprint(self.source)} {self.sorting}".strip()

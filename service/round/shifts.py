@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 
 from detectors.posterior import Announcement
+from service.round.lateness import Downtime, is_late
 from service.round.observe import Observed, Place
 from storage.shifts import EMERGING, HISTORY, LIVE, Shift
 
@@ -15,14 +16,14 @@ class Circumstances:
     """What decides whether an announcement may be told.
 
     `first_read_utc` is the stream's first poll. `known_before` is the number of places that had been folded
-    under other settings: what is first seen there now was there to be seen before. `late_before` is the
-    instant such that a count that could have been read before it is told late; None if nothing is late.
+    under other settings: what is first seen there now was there to be seen before. `downtimes` are the times
+    in which the source was not read, though it should have been.
     """
 
     stream_id: str
     first_read_utc: datetime.datetime
     known_before: int
-    late_before: datetime.datetime | None
+    downtimes: tuple[Downtime, ...]
     now: datetime.datetime
     fingerprint: str
     reading_id: int | None
@@ -64,7 +65,7 @@ def _shift(
         probability=announcement.probability,
         level_before=announcement.level_before,
         level_after=announcement.level_after,
-        late=_late(announced, circumstances),
+        late=is_late(announced, circumstances.downtimes),
         fingerprint=circumstances.fingerprint,
         reading_id=circumstances.reading_id,
         figures=_figures(announcement, observed, index),
@@ -75,10 +76,6 @@ def _origin(place: int, announced: Place, circumstances: Circumstances) -> str:
     """Only a shift whose announcing count became complete after the stream's first poll may be told."""
     older = announced.ready_utc <= circumstances.first_read_utc
     return HISTORY if older or place < circumstances.known_before else LIVE
-
-
-def _late(announced: Place, circumstances: Circumstances) -> bool:
-    return circumstances.late_before is not None and announced.ready_utc < circumstances.late_before
 
 
 def _figures(announcement: Announcement, observed: Observed, index: Mapping[int, int]) -> dict[str, object]:

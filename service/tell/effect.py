@@ -3,7 +3,7 @@
 import math
 
 from detectors.posterior import Quantiles
-from service.tell.rounding import SHARE_OF_WIDTH, Between, rounded
+from service.tell.rounding import NOTHING, SHARE_OF_WIDTH, Between, rounded
 
 SMALLEST_SHARE = 0.01
 TIMES_FROM = 2.0
@@ -13,7 +13,7 @@ def effect_words(before: Quantiles, after: Quantiles) -> str:
     """Such as "fell by about 40 %" or "rose to about 90 times what it was"."""
     if not _usable(before) or not _usable(after):
         return "moved"
-    if before.mid == 0 or after.mid == 0:
+    if before.mid < NOTHING or after.mid < NOTHING:
         return _from_or_to_nothing(before.mid, after.mid)
     ratio = after.mid / before.mid
     if abs(ratio - 1) < SMALLEST_SHARE:
@@ -33,9 +33,9 @@ def levels_words(before: Quantiles, after: Quantiles) -> str:
 
 
 def _from_or_to_nothing(before: float, after: float) -> str:
-    if before == after:
+    if before < NOTHING and after < NOTHING:
         return "moved"
-    return "rose from nothing" if before == 0 else "fell to nothing"
+    return "rose from nothing" if before < NOTHING else "fell to nothing"
 
 
 def _level(level: Quantiles, finest: float) -> str:

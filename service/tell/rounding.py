@@ -10,6 +10,8 @@ from dataclasses import dataclass
 
 SHARE_OF_WIDTH = 0.25
 FIRST_TO_THIRD_DIGIT = 100.0
+# A level below this is none: one count in a billion intervals.
+NOTHING = 1e-9
 UNITS = (5.0, 1.0)
 
 
@@ -29,7 +31,7 @@ def rounded(figure: Between, *, finest: float = math.inf) -> str:
     """
     if not math.isfinite(figure.value):
         return "unknown"
-    if figure.value == 0:
+    if abs(figure.value) < NOTHING:
         return "0"
     step = step_of(figure, finest=finest)
     decimals = max(0, -math.floor(math.log10(step) + 1e-9))

@@ -28,13 +28,13 @@ def record(model: Model, counts, longest: int) -> Recorded:
     """Fold a stream and keep what the judge looks at."""
     observations = as_observations(counts)
     by_length = np.zeros((len(observations), longest), np.float32)
-    state, _ = first_count(model, observations[0])
+    state, _ = first_count(model, (observations[0],))
     for place, observation in enumerate(observations[1:], start=1):
-        state, step = next_count(state, observation)
+        state, step = next_count(state, (observation,))
         length = state.counted - step.slots.newest + 1
         recent = np.flatnonzero(step.slots.used & (length <= longest))
         recent = recent[recent > 0]
-        by_length[place, length[recent] - 1] = step.run_mass[recent]
+        by_length[place, length[recent] - 1] = step.run_mass[0, recent]
     return Recorded(by_length)
 
 

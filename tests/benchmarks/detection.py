@@ -166,7 +166,9 @@ def main(streams: int) -> str:
     knowing = Model(dispersions=(DISPERSION,), wanders=((0.0, 1.0),))
     with ProcessPoolExecutor() as pool:
         figures = measure("this filter, default model", Model(), lasting, streams, pool)
-        figures += measure("the filter that knows the dispersion, no wander", knowing, [Rule()], streams, pool)
+        figures += measure(
+            "the filter that knows the dispersion, no wander", knowing, [Rule()], streams, pool
+        )
     return table([*figures, measure_cusum(streams)])
 
 

@@ -15,13 +15,11 @@ def command(given: Given, streams: tuple[str, ...], as_json: bool) -> None:
 
     What was said before is kept as evidence; shifts that are new by it are recorded as found in history.
     """
-    from service.cli.rebuilding import rebuild_with_progress
+    from service.cli.rebuilding import REBUILT_COLUMNS, rebuild_with_progress, rebuilt_cells
     from service.cli.show import show_json, show_table
 
     rebuilt = rebuild_with_progress(given, streams)
     if as_json:
         show_json(rebuilt)
     else:
-        show_table(
-            ("stream", "counts", "changed"), [[one.stream_id, one.counts, one.changed] for one in rebuilt]
-        )
+        show_table(REBUILT_COLUMNS, [rebuilt_cells(one) for one in rebuilt])

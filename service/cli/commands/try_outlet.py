@@ -12,14 +12,14 @@ from service.cli.options import Given, json_option, settings_option
 @click.pass_context
 def command(ctx: click.Context, name: str, as_json: bool) -> None:
     """Send the outlet NAME one message that says it is a test, and show the answer. Stores nothing."""
+    from service.cli.named import outlet_named
     from service.cli.opening import now
     from service.cli.show import say, show_json
     from service.exit_codes import Exit
     from service.outlets.trial import try_outlet
-    from service.wiring import outlet_named
 
     given: Given = ctx.obj
-    tried = try_outlet(outlet_named(given.settings, name), now())
+    tried = try_outlet(outlet_named(given, name), now())
     if as_json:
         show_json(tried)
     else:

@@ -15,14 +15,14 @@ def command(given: Given, name: str, limit: int, as_json: bool) -> None:
     """Fetch the source NAME once and show its rows as understood, and those kept out. Stores nothing."""
     from time import monotonic
 
+    from service.cli.named import source_named
+    from service.cli.opening import now
     from service.cli.show import show_json
-    from service.cli.source_view import document_json, show_document
-    from service.sources.document import Validators
-    from service.sources.open_source import Tools, read_document
-    from service.wiring import source_named
+    from service.cli.source_view import show_tried, tried_json
+    from service.cli.trying import try_source
 
-    document = read_document(source_named(given.settings, name), Validators(), tools=Tools(monotonic))
+    tried = try_source(source_named(given, name), monotonic, now())
     if as_json:
-        show_json(document_json(name, document))
+        show_json(tried_json(tried))
     else:
-        show_document(name, document, limit)
+        show_tried(tried, limit)

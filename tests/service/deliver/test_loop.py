@@ -11,7 +11,7 @@ from service.deliver.loop import MOST_IN_A_PASS, Counts, Tools, deliver_all, del
 from service.outlets.outlet import Kind, Outcome
 from storage.engine import Store
 from storage.errors import StoreBusy
-from storage.outbox import get_delivery, list_attempts, list_deliveries, send_again
+from storage.outbox import get_delivery, list_attempts, send_again
 
 GO_ON = threading.Event()
 DOWN = Outcome(Kind.TRY_LATER, 500, "It answered 500.")
@@ -104,7 +104,7 @@ def test_no_transaction_is_open_while_a_message_is_on_its_way(tools, store, told
 
     put("msg_1")
     put("msg_2", outlet="elsewhere")
-    assert deliver_all(tools, [told("desk", before=write_meanwhile)], GO_ON) == Counts(delivered=1)
+    assert deliver_all(tools, [told("desk", before=write_meanwhile)], GO_ON) == Counts(delivered=1, strays=1)
     assert stands(store, "msg_2").last_error == "seen"
 
 
@@ -205,24 +205,24 @@ def test_a_receiver_that_says_when_to_come_back_is_left_alone_with_all_its_messa
     assert deliver_all(tools, [desk, other], GO_ON) == Counts(delivered=3)
 
 
-def test_without_outlets_there_is_nothing_to_do(tools, put):
+def test_without_outlets_everything_waits(tools, put):
     put("msg_1")
-    assert deliver_all(tools, [], GO_ON) == Counts()
+    assert deliver_all(tools, [], GO_ON) == Counts(strays=1)
 
 
-def test_messages_of_an_outlet_that_left_the_settings_are_given_up_visibly(tools, store, clock, told, put):
+def test_messages_of_an_outlet_that_left_the_settings_wait_until_it_comes_back(
+    tools, store, clock, told, put, caplog
+):
     put("msg_1", outlet="old desk")
-    clock.move_on(timedelta(days=4))
-    assert deliver_all(tools, [told("desk")], GO_ON) == Counts()
-    clock.move_on(timedelta(days=1))
-    assert deliver_all(tools, [told("desk")], GO_ON) == Counts(given_up=1)
-    with store.reading() as conn:
-        (stray,) = list_deliveries(conn, state="given_up")
-    assert (stray.id, stray.attempts) == ("msg_1", 0)
-    assert stray.last_error == (
-        'Outlet "old desk" has not been in the settings for 5 days. Put it back and send this delivery '
-        "again, or leave it."
+    clock.move_on(timedelta(days=400))
+    assert deliver_all(tools, [told("desk")], GO_ON) == Counts(strays=1)
+    assert stands(store, "msg_1").state == "waiting"
+    (line,) = caplog.records
+    assert (line.getMessage(), line.facts) == (
+        "deliveries wait for outlets that are not in the settings",
+        {"outlets": "old desk", "waiting": 1},
     )
+    assert deliver_all(tools, [told("old desk")], GO_ON) == Counts(delivered=1)
 
 
 def test_one_call_makes_a_whole_pass_and_says_so_in_the_log(store, clock, told, put, caplog):

@@ -80,11 +80,11 @@ def test_410_ends_it_at_once(tools, store, clock, put, receiver, answer, desk):
 
 
 @pytest.mark.parametrize("status", [400, 401, 403, 404, 413, 422, 301, 307])
-def test_what_people_must_mend_waits_for_them(tools, store, clock, put, receiver, answer, desk, status):
+def test_what_people_must_mend_is_tried_again(tools, store, clock, put, receiver, answer, desk, status):
     receiver.will(answer(status, (("location", "/elsewhere"),)))
     put("msg_1")
     assert deliver_all(tools, [desk], GO_ON) == Counts(put_off=1)
-    assert due_in(store, clock, "msg_1") == 3600.0
+    assert due_in(store, clock, "msg_1") == 10.0
     assert outcomes(store, "msg_1") == [("refused", status)]
     assert [one.path for one in receiver.received] == ["/alerts"]
 

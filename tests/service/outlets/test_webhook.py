@@ -84,8 +84,11 @@ def test_a_trial_says_that_it_is_one(receiver):
     tried = try_outlet(hook(receiver.address), datetime.now(UTC))
     (got,) = receiver.received
     body = ReferenceVerifier(SECRET).verify(got.body, got.headers)
-    assert (body["type"], body["data"]["sentence"]) == ("trial", SENTENCE)
-    assert got.headers["webhook-id"].startswith("trial_")
+    assert (body["type"], body["outlet"], body["sentence"]) == ("trial", "desk", SENTENCE)
+    assert "This is a trial: nothing has moved" in SENTENCE
+    assert "invented figures" in SENTENCE
+    assert got.headers["webhook-id"] == body["id"]
+    assert body["id"].startswith("trial_")
     assert (tried.taken, tried.sentence) == (True, 'Outlet "desk" took the trial (status 200).')
 
 

@@ -1,61 +1,19 @@
-"""A store in a fresh file, a clock that stands where it is put, and a story of an invented show."""
+"""A story and a recorded shift of an invented show."""
 
 import datetime
-from collections.abc import Callable, Iterator
-from dataclasses import dataclass, replace
-from pathlib import Path
+from collections.abc import Callable
+from dataclasses import replace
 
 import pytest
 
 from detectors.posterior import Quantiles
 from service.tell.story import Marker, ShiftStory
-from storage import migrate
-from storage.engine import Store, open_store
+from storage.engine import Store
 from storage.shifts import EMERGING, LIVE, Shift
 from storage.streams import SeenStream, see_streams
 
 NOW = datetime.datetime(2026, 3, 23, 6, 0, tzinfo=datetime.UTC)
 FIRST_WEEK = datetime.date(2026, 2, 23)
-
-
-@dataclass
-class StillClock:
-    """Stands still; both clocks are moved by hand."""
-
-    instant: datetime.datetime = NOW
-    seconds: float = 0.0
-
-    def now(self) -> datetime.datetime:
-        return self.instant
-
-    def monotonic(self) -> float:
-        return self.seconds
-
-    def pass_by(self, **length: float) -> None:
-        passed = datetime.timedelta(**length)
-        self.instant += passed
-        self.seconds += passed.total_seconds()
-
-
-@pytest.fixture
-def clock() -> StillClock:
-    return StillClock()
-
-
-@pytest.fixture(scope="session")
-def migrated_file(tmp_path_factory: pytest.TempPathFactory) -> bytes:
-    path = tmp_path_factory.mktemp("migrated") / "store.sqlite"
-    with open_store(str(path)) as store:
-        migrate.upgrade(store)
-    return path.read_bytes()
-
-
-@pytest.fixture
-def store(tmp_path: Path, migrated_file: bytes) -> Iterator[Store]:
-    path = tmp_path / "store.sqlite"
-    path.write_bytes(migrated_file)
-    with open_store(str(path), wait_seconds=5.0) as opened:
-        yield opened
 
 
 def week(number: int) -> Marker:

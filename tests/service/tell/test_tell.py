@@ -63,7 +63,7 @@ def test_telling_twice_tells_once(store: Store, stored_shift: Make, clock) -> No
     keep(store, stored_shift())
     assert tell_due(store, [DESK], clock) == 1
     first = outbox(store)
-    clock.pass_by(hours=1)
+    clock.move_on(datetime.timedelta(hours=1))
     assert tell_due(store, [DESK, Taker("new")], clock) == 0
     assert outbox(store) == first
 
@@ -147,7 +147,7 @@ def test_two_tellers_write_one_message(store: Store, stored_shift: Make, clock, 
         before = telling.gather(conn)
     with open_store(str(tmp_path / "store.sqlite")) as other:
         assert tell_due(other, [DESK], clock) == 1
-    clock.pass_by(minutes=1)
+    clock.move_on(datetime.timedelta(minutes=1))
     # As if this one had read before the other wrote.
     assert sum(telling._tell_slate(store, untold, [DESK], clock) for untold in before.values()) == 0
     assert len(outbox(store)) == 1

@@ -6,8 +6,11 @@ from collections.abc import Callable
 from dataclasses import replace
 
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from detectors.posterior import Quantiles
+from service.tell.alert_body import alert_body
 from service.tell.plain import LONGEST_TITLE, plain, plain_or_none
 from service.tell.story import Marker, ShiftStory
 from service.tell.words import CAUTION, probability_words, sentence
@@ -161,3 +164,39 @@ def test_the_caution_names_no_cause() -> None:
         "A date in common is not a cause; look at what else changed then before deciding anything about "
         "people's work."
     )
+
+
+LEVELS = st.floats(0, allow_subnormal=True) | st.just(math.nan) | st.floats(0, 2000)
+QUANTILES = st.tuples(LEVELS, LEVELS, LEVELS).map(lambda three: Quantiles(*sorted(three)))
+
+
+@given(QUANTILES, QUANTILES, st.floats(), st.text(), st.text(max_size=8))
+def test_no_figure_and_no_title_breaks_a_sentence(before, after, probability, title, release) -> None:
+    first = Marker("a", datetime.date(2026, 3, 2), release, 7)
+    told = ShiftStory(
+        shift_id="shift_1",
+        stream_id="walks",
+        title=title,
+        slate=None,
+        shape="release",
+        unit="release",
+        level_before=before,
+        level_after=after,
+        probability=probability,
+        start=first,
+        region=(first,),
+        announced=first,
+        announced_utc=datetime.datetime(2026, 3, 23, tzinfo=datetime.UTC),
+        readable_utc=None,
+        counts_since=None,
+        late=False,
+        settings="f1",
+        reading_id=None,
+    )
+    words = sentence(told)
+    assert "the filtered level " in words
+    assert len(words.splitlines()) == 1
+    assert not any(
+        wrong in words.removeprefix(plain(title)) for wrong in ("nan ", "inf ", "e+", "-0 ", "100 %")
+    )
+    alert_body(told, "msg_1", told.announced_utc).decode("utf-8")
