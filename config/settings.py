@@ -3,7 +3,7 @@
 import datetime
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Annotated, Any
+from typing import Annotated, Any, Literal
 
 from pydantic import BeforeValidator, Field, Strict, ValidationInfo
 
@@ -34,6 +34,10 @@ class Service(Part):
     zone: Zone = "UTC"
     good_rounds_address: SecretAddress | None = None
     stop_within: Deadline = datetime.timedelta(seconds=20)
+    log_form: Literal["words", "json"] = Field(default="words", description='"words" or "json"')
+    log_level: Literal["debug", "info", "warning", "error"] = Field(
+        default="info", description='"debug", "info", "warning" or "error"'
+    )
 
 
 class Sections(Part):

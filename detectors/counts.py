@@ -185,7 +185,7 @@ def _stirling_error(n: FloatArray) -> FloatArray:
     return np.where(small, direct, series)
 
 
-def effective_dispersion(dispersion: ArrayLike, relative_sd: float) -> FloatArray:
+def effective_dispersion(dispersion: ArrayLike, relative_sd: float | FloatArray) -> FloatArray:
     """Dispersion of a count whose exposure is itself uncertain.
 
     With exposure factor E of mean 1 and variance c^2, Var = m + m^2 / r (1 + c^2) + m^2 c^2, hence
@@ -196,8 +196,8 @@ def effective_dispersion(dispersion: ArrayLike, relative_sd: float) -> FloatArra
     ----------
     dispersion : array_like
         Dispersions r at a known exposure, above 0; infinity is the Poisson law.
-    relative_sd : float
-        Relative standard deviation c of the exposure, at least 0.
+    relative_sd : float or ndarray
+        Relative standard deviation c of the exposure, at least 0; an array is broadcast.
 
     Returns
     -------

@@ -48,7 +48,7 @@ class FilterState:
     counted: int
     position: int
     log_weight: FloatArray
-    weights: FloatArray
+    weights: NDArray[np.floating]
     run_factor: FloatArray
     pair_total: FloatArray
     slots: RunSlots

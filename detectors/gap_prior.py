@@ -143,8 +143,7 @@ class GapPrior:
         """
         ages = np.asarray(age, dtype=np.int64)
         needed = successes_needed(self.shape, self.p, ages)
-        ends: FloatArray = needed @ chance_within(self.shape, self.p, gap)
-        return ends
+        return _as_chance(needed @ chance_within(self.shape, self.p, gap))
 
     def first_shift_within(self, age: ArrayLike, gap: int) -> FloatArray:
         """Chance that the first run ends within the next gap.
@@ -173,8 +172,7 @@ class GapPrior:
         """
         ages = np.asarray(age, dtype=np.int64)
         needed = first_successes_needed(self.shape, self.p, ages)
-        ends: FloatArray = needed @ chance_within(self.shape, self.p, gap)
-        return ends
+        return _as_chance(needed @ chance_within(self.shape, self.p, gap))
 
     def log_survival(self, t: ArrayLike) -> FloatArray:
         """Logarithm of S(t) = P(G > t) for an ordinary run.
@@ -251,3 +249,8 @@ class GapPrior:
 def _mean_trials(prior: GapPrior) -> FloatArray:
     """Mean trials until the successes still needed, for 1 .. shape of them."""
     return np.arange(1, prior.shape + 1) / prior.p
+
+
+def _as_chance(values: ArrayLike) -> FloatArray:
+    """Shares add up to 1 within rounding only; a chance above 1 would leave a run a negative weight."""
+    return np.minimum(np.asarray(values, dtype=np.float64), 1.0)

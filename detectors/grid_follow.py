@@ -131,7 +131,7 @@ def _longest_runs(state: FilterState) -> FloatArray:
     run_mass = np.add.reduceat(share[:, None] * by_slot, state.bench.first_pair, axis=0)
     heavy = state.slots.used & (run_mass > SCARCE_RUN)
     oldest = np.where(heavy, state.slots.oldest, state.counted)
-    return (state.counted - oldest.min(axis=1) + 1).astype(np.float64)
+    return np.asarray(state.counted - oldest.min(axis=1) + 1, dtype=np.float64)
 
 
 def _needed_range(state: FilterState) -> tuple[FloatArray, FloatArray]:

@@ -42,13 +42,13 @@ def jump_step(jump: JumpPrior | IndependentLevels, grid: LevelGrid) -> Map:
     Returns
     -------
     callable
-        Takes and returns an ndarray of shape (rows,), in the precision given. A jump prior is normalised over all nodes that an
-        endless grid of the same spacing would have: what lands beyond the grid's ends is lost, as it should
-        be, since the grid spans every level at which the newest count is likely.
+        Takes and returns an ndarray of shape (rows,), in the precision given. A jump prior is normalised
+        over all nodes that an endless grid of the same spacing would have: what lands beyond the grid's
+        ends is lost, as it should be, since the grid spans every level at which the newest count is likely.
     """
     if isinstance(jump, IndependentLevels):
         return _independent(jump, grid)
-    groups = [_group(jump, grid, float(h)) for h in np.unique(grid.spacing)]
+    groups = [_group(grid, float(h)) for h in np.unique(grid.spacing)]
     return lambda shifting: _apply(jump, groups, shifting)
 
 
@@ -60,22 +60,22 @@ def _independent(jump: IndependentLevels, grid: LevelGrid) -> Map:
 @lru_cache(maxsize=256)
 def jump_weights(jump: JumpPrior, spacing: float, size: int) -> FloatArray:
     """Probability of a jump by 0, 1, ..., size - 1 nodes upwards (or downwards: it is symmetric)."""
-    offsets = np.arange(int(FARTHEST_JUMP / spacing) + 2)
+    offsets = np.arange(int(FARTHEST_JUMP / spacing) + 2, dtype=np.float64)
     density = jump.density(offsets * spacing)
-    weights = (density / (2.0 * density.sum() - density[0]))[:size]
+    weights: FloatArray = (density / (2.0 * density.sum() - density[0]))[:size]
     weights.flags.writeable = False
     return weights
 
 
 @lru_cache(maxsize=128)
 def _toeplitz(jump: JumpPrior, spacing: float, size: int, kind: str) -> NDArray[np.floating]:
-    weights = jump_weights(jump, spacing, size).astype(kind)
-    matrix = weights[np.abs(np.arange(size)[:, None] - np.arange(size)[None, :])]
+    weights: NDArray[np.floating] = jump_weights(jump, spacing, size).astype(kind)
+    matrix: NDArray[np.floating] = weights[np.abs(np.arange(size)[:, None] - np.arange(size)[None, :])]
     matrix.flags.writeable = False
     return matrix
 
 
-def _group(jump: JumpPrior, grid: LevelGrid, spacing: float) -> _Group:
+def _group(grid: LevelGrid, spacing: float) -> _Group:
     members = np.flatnonzero(grid.spacing == spacing)
     sizes = grid.size[members]
     longest = int(sizes.max())

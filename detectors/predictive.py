@@ -82,4 +82,6 @@ def _up_to(count: int, mean: FloatArray, dispersion: FloatArray) -> FloatArray:
     poisson = np.isinf(dispersion)
     finite = np.where(poisson, 1.0, dispersion)
     share = special.betainc(finite, count + 1.0, finite / (finite + mean))
-    return np.where(poisson, special.gammaincc(count + 1.0, mean), share) if poisson.any() else share
+    if poisson.any():
+        share = np.where(poisson, special.gammaincc(count + 1.0, mean), share)
+    return np.asarray(share, dtype=np.float64)

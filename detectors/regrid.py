@@ -40,8 +40,8 @@ def extended(weights: FloatArray, old: LevelGrid, new: LevelGrid) -> FloatArray:
 def respaced(block: FloatArray, old_level: FloatArray, new_level: FloatArray) -> FloatArray:
     """One pair's weights interpolated to another spacing.
 
-    Each run's weights are divided by a reference curve (the Gaussian with the weights' mean and variance, plus
-    a low broad part), the smooth ratio is interpolated with cubic polynomials, and the curve is put back:
+    Each run's weights are divided by a reference curve (the Gaussian with the weights' mean and variance,
+    plus a low broad part), the smooth ratio is interpolated with cubic polynomials, and the curve is put back:
     neither the narrow peak of an old run nor the hole that the jump prior leaves is smeared. Each run's total
     is kept exactly.
 

@@ -1,7 +1,7 @@
 """The filter: run length, level, dispersion and wander, one count at a time.
 
-Several streams may be folded side by side, as simulations do: they must have the same positions, and so the same
-runs; each has its own counts, pairs, grids and weights.
+Several streams may be folded side by side, as simulations do: they must have the same positions, and so the
+same runs; each has its own counts, pairs, grids and weights.
 """
 
 from collections.abc import Sequence

@@ -40,6 +40,7 @@ _BY_ERROR: dict[str, Exit] = {
     "service.replay.errors.ReplayError": Exit.UNREADABLE,
     "service.round.calendar.UnusableInterval": Exit.WRONG_USE,
     "service.sources.errors.SourceUnreadable": Exit.UNREADABLE,
+    "service.wiring.UnusableThreshold": Exit.SETTINGS,
     "storage.errors.NoSuchRow": Exit.NOT_FOUND,
     "storage.errors.StoreError": Exit.DATABASE,
 }

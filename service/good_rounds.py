@@ -1,4 +1,4 @@
-"""Calls the address that notices when good rounds stop coming, so that a dead daemon does not go unnoticed."""
+"""Calls the address that notices when good rounds stop coming, so that a dead daemon is noticed."""
 
 from collections.abc import Callable
 

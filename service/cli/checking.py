@@ -10,6 +10,7 @@ from config.settings import Settings
 from service.cli.opening import settings_of
 from service.cli.options import Given
 from service.cli.show import say, show_json
+from service.wiring import require_usable_thresholds
 
 
 @dataclass(frozen=True, slots=True)
@@ -30,7 +31,9 @@ class Checked:
 def check(given: Given) -> Checked:
     """Read the settings and gather all that is wrong with them."""
     try:
-        return Checked(given.settings, settings_of(given), (), "")
+        settings = settings_of(given)
+        require_usable_thresholds(settings)
+        return Checked(given.settings, settings, (), "")
     except SettingsFaults as error:
         return Checked(given.settings, None, error.faults, str(error))
 

@@ -17,6 +17,8 @@ from detectors.observation import LARGEST_COUNT, Observation
 from detectors.posterior import Announcement, Posterior
 
 DEFAULTS = Model()
+FEW = Model(dispersions=(2.0, 30.0, 512.0), wanders=((0.0, 1.0), (0.05, 0.5)))
+"""Fewer pairs, where a stream of counts in the millions would take long under the defaults."""
 
 
 def folded(observations: list[Observation], model: Model = DEFAULTS) -> list[Posterior]:
@@ -89,44 +91,47 @@ def test_all_zeros() -> None:
     assert max(p.one_off for p in posteriors[20:]) < 0.1
 
 
-@pytest.mark.parametrize("count", [1, 3, 250, 10**6, 10**12, 10**15])
+@pytest.mark.parametrize("count", [1, 3, 250])
 def test_constant(count: int) -> None:
     last = folded(plain([count] * 60))[-1]
     assert last.level.mid == pytest.approx(count, rel=0.15)
     assert last.one_off < 0.05
+    # Counts that do not vary at all leave no room for much dispersion.
     assert last.dispersion.value[-1] >= 512.0
 
 
-@pytest.mark.parametrize("place", [0, 1, 12, 40])
+@pytest.mark.parametrize("count", [10**6, 10**12, 10**15, LARGEST_COUNT])
+def test_constant_and_large(count: int) -> None:
+    last = folded(plain([count] * 40), FEW)[-1]
+    assert last.level.mid == pytest.approx(count, rel=0.15)
+    assert last.dispersion.value == (512.0,)
+
+
+@pytest.mark.parametrize("place", [0, 1, 12, 30])
 def test_one_count_of_2_to_the_53(place: int) -> None:
-    counts = np.random.default_rng(1).poisson(30.0, 60).tolist()
+    counts = np.random.default_rng(1).poisson(30.0, 40).tolist()
     counts[place] = LARGEST_COUNT
-    last = folded(plain(counts))[-1]
+    last = folded(plain(counts), FEW)[-1]
     assert last.level.mid == pytest.approx(30.0, rel=0.2)
-
-
-def test_nothing_but_counts_of_2_to_the_53() -> None:
-    assert folded(plain([LARGEST_COUNT] * 30))[-1].level.mid == pytest.approx(LARGEST_COUNT, rel=0.15)
 
 
 @pytest.mark.parametrize("count", [0, 1, 77, 10**9, LARGEST_COUNT])
 def test_a_single_count(count: int) -> None:
-    (only,) = folded(plain([count]))
+    (only,) = folded(plain([count]), FEW if count > 10**6 else DEFAULTS)
     assert only.run_lengths.probability == (1.0,)
     assert only.run_length_mode == 1
 
 
-@pytest.mark.parametrize("dispersion", [3.0, 50.0, math.inf])
+@pytest.mark.parametrize("dispersion", [3.0, 50.0])
 @pytest.mark.parametrize(("before", "after"), [(10.0, 10_000.0), (100.0, 100_000.0), (50_000.0, 50.0)])
 @pytest.mark.parametrize("first", [15, 80])
 def test_thousand_fold_jump(first: int, before: float, after: float, dispersion: float) -> None:
     rng = np.random.default_rng([first, int(before)])
     level = np.repeat([before, after], [first, 25])
-    mixed = level if math.isinf(dispersion) else level * rng.gamma(dispersion, 1.0 / dispersion, level.size)
-    counts = rng.poisson(mixed).tolist()
-    advanced = advance(start(DEFAULTS), plain(counts), Rule())
+    counts = rng.poisson(level * rng.gamma(dispersion, 1.0 / dispersion, level.size)).tolist()
+    advanced = advance(start(FEW), plain(counts), Rule())
     assert [a.start_position for a in advanced.announcements] == [first]
-    last = folded(plain(counts))[-1]
+    last = folded(plain(counts), FEW)[-1]
     # The level, the truth within 30 %; a bound on what dispersion 3 itself leaves open after 25 counts.
     assert last.level.mid == pytest.approx(after, rel=0.3)
     # The counts after it are ordinary ones.
@@ -140,14 +145,14 @@ def test_alternating_nothing_and_a_million() -> None:
 
 
 def test_growing_without_end() -> None:
-    last = folded(plain([int(1.8**i) for i in range(62)]))[-1]
+    last = folded(plain([int(1.8**i) for i in range(60)]), FEW)[-1]
     assert last.level.mid > 1e12
 
 
 @given(st.lists(st.one_of(st.none(), st.integers(0, 50), st.integers(0, 10**15)), min_size=1, max_size=30))
 @settings(max_examples=25, deadline=None, suppress_health_check=[HealthCheck.too_slow])
 def test_any_counts(counts: list[int | None]) -> None:
-    folded([Observation(i, x) for i, x in enumerate(counts)])
+    folded([Observation(i, x) for i, x in enumerate(counts)], FEW)
 
 
 # Positions and what is missing
@@ -198,7 +203,7 @@ def test_extreme_exposure(exposure: float) -> None:
     rng = np.random.default_rng(3)
     level = 200.0 / exposure
     counts = rng.poisson(200.0, 60).tolist()
-    last = folded([Observation(i, x, exposure) for i, x in enumerate(counts)])[-1]
+    last = folded([Observation(i, x, exposure) for i, x in enumerate(counts)], FEW)[-1]
     if level >= 0.01:
         assert last.level.mid == pytest.approx(level, rel=0.1)
     # Levels below 0.01 are not told apart: at 2e-4 it is enough that nothing breaks.
@@ -207,7 +212,7 @@ def test_extreme_exposure(exposure: float) -> None:
 @given(st.lists(st.tuples(st.integers(0, 10**6), st.floats(1e-6, 1e6), st.floats(0.0, 5.0)), min_size=1, max_size=25))
 @settings(max_examples=25, deadline=None, suppress_health_check=[HealthCheck.too_slow])
 def test_any_exposure(values: list[tuple[int, float, float]]) -> None:
-    folded([Observation(i, x, e, c) for i, (x, e, c) in enumerate(values)])
+    folded([Observation(i, x, e, c) for i, (x, e, c) in enumerate(values)], FEW)
 
 
 def test_an_exposure_known_to_five_times_itself_says_little() -> None:

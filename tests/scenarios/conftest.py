@@ -67,19 +67,36 @@ class HandClock:
 
 @dataclass
 class Studio:
-    """The counting service. Serves rows as JSON with an ETag; a test may break it."""
+    """The counting service. Serves rows as JSON with an ETag; a test may break it.
+
+    A walker in another process says in a header which instant it has; it is served the weeks over by then.
+    """
 
     address: str = ""
     rows: list[dict[str, object]] = field(default_factory=list)
     broken: tuple[int, bytes] | None = None
     drip_seconds: float = 0.0
     asked: list[int] = field(default_factory=list)
+    instants: list[str] = field(default_factory=list)
+    by_show: dict[str, list[int]] = field(default_factory=dict)
 
     def weekly(self, show: str, counts: list[int | None], first: datetime.date = MONDAY) -> None:
         """Replaces a show's rows."""
         self.rows = [row for row in self.rows if row["show"] != show] + [
             {"show": show, "day": (first + number * WEEK).isoformat(), "plays": count}
             for number, count in enumerate(counts)
+        ]
+
+    def serve_by_instant(self, by_show: dict[str, list[int]]) -> None:
+        self.by_show = by_show
+
+    def rows_by(self, instant: str) -> list[dict[str, object]]:
+        day = datetime.datetime.fromisoformat(instant).date()
+        return [
+            {"show": show, "day": (MONDAY + number * WEEK).isoformat(), "plays": count}
+            for show, counts in self.by_show.items()
+            for number, count in enumerate(counts)
+            if MONDAY + (number + 1) * WEEK <= day
         ]
 
     def answer(self, tag: str | None) -> tuple[int, bytes, str]:
@@ -136,6 +153,10 @@ def _handler(inner: object) -> type[BaseHTTPRequestHandler]:
     class Handler(BaseHTTPRequestHandler):
         def do_GET(self) -> None:
             assert isinstance(inner, Studio)
+            instant = self.headers.get("x-instant")
+            if instant is not None:
+                inner.instants.append(instant)
+                inner.rows = inner.rows_by(instant)
             status, body, tag = inner.answer(self.headers.get("if-none-match"))
             inner.asked.append(status)
             self.send_response(status)
@@ -321,6 +342,11 @@ def desk(loopback: Callable[[object], str]) -> Desk:
 def world(open_fresh: Callable[[str], Store], studio: Studio, desk: Desk) -> World:
     clock = HandClock(datetime.datetime(2026, 1, 5, 6, tzinfo=UTC))
     return World(open_fresh("store"), clock, studio, desk)
+
+
+@pytest.fixture
+def secret() -> str:
+    return SECRET
 
 
 @pytest.fixture
