@@ -73,7 +73,7 @@ class Judgement(Part):
 
     threshold: Threshold = 0.9
     window: Window = 40
-    lasting: Window = 4
+    lasting: Window = 3
     fewest_counts: FewestCounts = 12
 
 

@@ -2,6 +2,7 @@
 
 from collections.abc import Sequence
 from dataclasses import replace
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -117,7 +118,7 @@ def _upper_levels(state: FilterState) -> FloatArray:
     return np.array(
         [
             upper_log_level(grid.log_level[begin:end], mass[begin:end], REFERENCE_SHARE)
-            for begin, end in zip(ends[:-1], ends[1:], strict=True)
+            for begin, end in pairwise(ends.tolist())
         ]
     )
 

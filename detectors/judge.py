@@ -35,7 +35,7 @@ class Rule:
 
     threshold: float = 0.9
     window: int = 40
-    lasting: int = 4
+    lasting: int = 3
     fewest_counts: int = 12
 
     def __post_init__(self) -> None:

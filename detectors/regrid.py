@@ -6,12 +6,13 @@ from numpy.typing import NDArray
 from detectors.level_grid import LevelGrid
 
 FloatArray = NDArray[np.float64]
+Weights = NDArray[np.floating]
 
 FLOOR = 1e-7
 """Height of the broad part of the reference curve, beside a peak of 1."""
 
 
-def extended(weights: FloatArray, old: LevelGrid, new: LevelGrid) -> FloatArray:
+def extended(weights: Weights, old: LevelGrid, new: LevelGrid) -> Weights:
     """Weights on grids of the same spacing but another range; nodes outside the old range are empty.
 
     Parameters
@@ -37,13 +38,13 @@ def extended(weights: FloatArray, old: LevelGrid, new: LevelGrid) -> FloatArray:
     return result
 
 
-def respaced(block: FloatArray, old_level: FloatArray, new_level: FloatArray) -> FloatArray:
+def respaced(block: Weights, old_level: FloatArray, new_level: FloatArray) -> Weights:
     """One pair's weights interpolated to another spacing.
 
     Each run's weights are divided by a reference curve (the Gaussian with the weights' mean and variance,
-    plus a low broad part), the smooth ratio is interpolated with cubic polynomials, and the curve is put back:
-    neither the narrow peak of an old run nor the hole that the jump prior leaves is smeared. Each run's total
-    is kept exactly.
+    plus a low broad part), the smooth ratio is interpolated with cubic polynomials, and the curve is put
+    back: neither the narrow peak of an old run nor the hole that the jump prior leaves is smeared. Each run's
+    total is kept exactly.
 
     Parameters
     ----------

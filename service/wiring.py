@@ -48,8 +48,8 @@ class UnusableThreshold(ValueError):
         self.where, self.threshold, self.floor = where, threshold, floor
         super().__init__(
             f"{where}: the threshold must lie above {floor:.3f}, the recent shift probability of counts that "
-            f"say nothing (it follows from window, lasting, mean_gap and gap_shape); got {threshold}. Raise the "
-            "threshold or mean_gap, or narrow the window."
+            f"say nothing (it follows from window, lasting, mean_gap and gap_shape); got {threshold}. "
+            "Raise the threshold or mean_gap, or narrow the window."
         )
 
 
