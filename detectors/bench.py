@@ -139,11 +139,17 @@ class Bench:
 
     def likelihood(self, counts: Sequence[Observation]) -> Likelihood:
         """Probability of each stream's count at each of its nodes (missing counts have none)."""
-        count = self.over_rows(np.array([float(one.count or 0) for one in counts]))
+        exact = np.array([float(one.count or 0) for one in counts])
+        count = self.over_rows(exact)
         exposure = self.over_rows(np.array([one.exposure for one in counts]))
         relative_sd = self.over_rows(np.array([one.relative_sd for one in counts]))
         mean = self.level * exposure
-        negative_binomial = np.exp(self._log_ordinary(count, exposure, relative_sd, mean))
+        if np.any(relative_sd > 0.0):
+            dispersion = effective_dispersion(self.row_dispersion, relative_sd)
+            log_ordinary = log_negative_binomial(count, mean, dispersion)
+        else:
+            log_ordinary = self.rows.log_probability(self.over_pairs(exact), exposure)
+        negative_binomial = np.exp(log_ordinary)
         share = self.model.one_off_share
         one_off = share * one_off_probability(count, mean, self.model.one_off_tail)
         total = (1.0 - share) * negative_binomial + one_off
@@ -151,16 +157,6 @@ class Bench:
         return Likelihood(
             total / self.over_rows(largest), one_off / total, negative_binomial, np.log(largest)
         )
-
-    def _log_ordinary(
-        self, count: FloatArray, exposure: FloatArray, relative_sd: FloatArray, mean: FloatArray
-    ) -> FloatArray:
-        if self.streams == 1 and relative_sd == 0.0:
-            return self.rows.log_probability(int(count), float(exposure))
-        dispersion = self.row_dispersion
-        if np.any(relative_sd > 0.0):
-            dispersion = effective_dispersion(dispersion, relative_sd)
-        return log_negative_binomial(count, mean, dispersion)
 
 
 def bench_for(
@@ -176,6 +172,6 @@ def bench_for(
         grid=grid,
         level=level,
         row_dispersion=row_dispersion,
-        rows=NegativeBinomialRows(level, row_dispersion),
+        rows=NegativeBinomialRows(level, dispersion, grid.pair),
         jump=jump_step(model.jump, grid),
     )

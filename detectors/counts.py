@@ -68,47 +68,45 @@ def log_negative_binomial(count: ArrayLike, mean: ArrayLike, dispersion: ArrayLi
 
 @dataclass(frozen=True, eq=False)
 class NegativeBinomialRows:
-    """Many negative-binomial laws that one count after another is held against.
+    """Many negative-binomial laws at many means, that one count after another is held against.
 
-    What depends on the dispersion alone is computed once for each different dispersion.
+    What depends on the dispersion alone is computed once for each law.
 
     Attributes
     ----------
     mean : ndarray, shape (rows,)
         Means at exposure 1, above 0.
-    dispersion : ndarray, shape (rows,)
+    dispersion : ndarray, shape (laws,)
         Dispersions, above 0; infinity is the Poisson law.
+    law : ndarray of int, shape (rows,)
+        The law of each row.
 
     Examples
     --------
-    >>> rows = NegativeBinomialRows(np.array([6.25, 6.25]), np.array([4.0, np.inf]))
+    >>> rows = NegativeBinomialRows(np.array([6.25, 6.25]), np.array([4.0, np.inf]), np.array([0, 1]))
     >>> rows.log_probability(12, exposure=2.0).round(6).tolist()
     [-2.879547, -2.178471]
     """
 
     mean: FloatArray
     dispersion: FloatArray
+    law: IntArray
     _m_and_r: FloatArray = field(init=False, repr=False)
-    _different: FloatArray = field(init=False, repr=False)
-    _which: IntArray = field(init=False, repr=False)
     _stirling_r: FloatArray = field(init=False, repr=False)
 
     def __post_init__(self) -> None:
         r = np.minimum(self.dispersion, _POISSON)
-        different, which = np.unique(r, return_inverse=True)
-        object.__setattr__(self, "_m_and_r", np.stack((self.mean, r)))
-        object.__setattr__(self, "_different", different)
-        object.__setattr__(self, "_which", which)
-        object.__setattr__(self, "_stirling_r", _stirling_error(different))
+        object.__setattr__(self, "_m_and_r", np.stack((self.mean, r.take(self.law))))
+        object.__setattr__(self, "_stirling_r", _stirling_error(r))
 
-    def log_probability(self, count: int, exposure: float = 1.0) -> FloatArray:
+    def log_probability(self, count: int | FloatArray, exposure: float | FloatArray = 1.0) -> FloatArray:
         """Log probability of a count under every law.
 
         Parameters
         ----------
-        count : int
-            The count, from 0 to 2^53.
-        exposure : float
+        count : int, or ndarray of shape (laws,)
+            The count, from 0 to 2^53: one for all, or one a law.
+        exposure : float, or ndarray of shape (rows,)
             Factor on the means, above 0.
 
         Returns
@@ -117,9 +115,12 @@ class NegativeBinomialRows:
             Natural logarithms, the same as `log_negative_binomial` gives.
         """
         x = np.asarray(count, dtype=np.float64)
-        m_and_r = self._m_and_r * np.array([[exposure], [1.0]])
-        peak = _peak(x, self._different, self._stirling_r)
-        log_p: FloatArray = peak.take(self._which) - _deviance(x, m_and_r)
+        m_and_r = self._m_and_r
+        if isinstance(exposure, np.ndarray) or exposure != 1.0:
+            m_and_r = np.stack((m_and_r[0] * exposure, m_and_r[1]))
+        peak = _peak(x, np.minimum(self.dispersion, _POISSON), self._stirling_r)
+        deviance = _deviance(x.take(self.law) if x.ndim else x, m_and_r)
+        log_p: FloatArray = peak.take(self.law) - deviance
         return log_p
 
 

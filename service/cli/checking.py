@@ -7,7 +7,7 @@ import click
 
 from config.errors import Fault, SettingsFaults
 from config.settings import Settings
-from service.cli.opening import settings_of
+from service.cli.opening import settings_with_secrets
 from service.cli.options import Given
 from service.cli.show import say, show_json
 from service.wiring import require_usable_thresholds
@@ -31,7 +31,7 @@ class Checked:
 def check(given: Given) -> Checked:
     """Read the settings and gather all that is wrong with them."""
     try:
-        settings = settings_of(given)
+        settings = settings_with_secrets(given)
         require_usable_thresholds(settings)
         return Checked(given.settings, settings, (), "")
     except SettingsFaults as error:

@@ -1,27 +1,85 @@
-"""The stored history of a stream as people read it."""
+"""The stored history of a stream as people and machines read it."""
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 
-from service.cli.show import blocks, say, show_table, width
+from service.cli.figures import (
+    LEVEL_COLUMN,
+    figures_json,
+    probability_text,
+    quantiles_text,
+    run_lengths_json,
+    weighted_json,
+)
+from service.cli.run_start import run_start, run_start_text
+from service.cli.show import Cell, blocks, say, show_table, width
 from service.cli.sparkline import sparkline
-from service.cli.stream_view import HISTORY_COLUMNS, history_cells
-from storage.posteriors import StoredPosterior
+from storage.posteriors import StoredPosterior, as_posterior
 from storage.streams import Stream
 
+COLUMNS = ("place", "at", "count", LEVEL_COLUMN, "shift", "run", "run began", "one-off")
+EVIDENCE_COLUMNS = ("written", "replaced")
 LEGEND = (
-    "shift: probability of a recent shift; run: most probable run length, in counts; run lengths: the most "
-    "probable groups of them; one-off: probability that the count is one; log p: log probability of the "
-    "count, given those before it. With --json the whole run-length posterior of each count."
+    "level: as filtered from the counts so far; shift: probability of a recent shift not announced yet; "
+    "run: most probable run length, in counts; one-off: probability that the count is one. The whole "
+    "run-length posterior is in --json."
 )
 
 
-def show_history(stream: Stream, stored: Sequence[StoredPosterior]) -> None:
+def show_history(stream: Stream, stored: Sequence[StoredPosterior], labels: Mapping[int, str]) -> None:
     """Print it: the counts at a glance, then count by count."""
-    say(f"{stream.title} ({stream.id})")
+    _say_head(stream)
     if not stored:
-        say("Nothing has been said of it yet: no count is stored, or none of that time.")
+        say("Nothing has been said of it: no count was folded, or none of that time.")
         return
     say(sparkline([one.count for one in stored], width(), blocks()))
     say(LEGEND)
     say("")
-    show_table(HISTORY_COLUMNS, [history_cells(one) for one in stored])
+    show_table(COLUMNS, [_cells(one, labels) for one in stored])
+
+
+def show_evidence(stream: Stream, stored: Sequence[StoredPosterior], labels: Mapping[int, str]) -> None:
+    """Print all that was ever said of these places, each place with what holds now first."""
+    _say_head(stream)
+    if not stored:
+        say("Nothing was ever said of that.")
+        return
+    say(LEGEND)
+    say("")
+    lines = [[*_cells(one, labels), one.written_utc, one.superseded_utc] for one in stored]
+    show_table((*COLUMNS, *EVIDENCE_COLUMNS), lines)
+
+
+def history_json(stored: StoredPosterior) -> dict[str, object]:
+    """One stored posterior with the whole run-length posterior of its observation."""
+    full = as_posterior(stored)
+    return {
+        **figures_json(stored),
+        "run_lengths": run_lengths_json(full.run_lengths),
+        "dispersion": weighted_json(full.dispersion),
+        "wander": weighted_json(full.wander),
+        "written": stored.written_utc,
+        "replaced": stored.superseded_utc,
+        "fingerprint": stored.fingerprint,
+    }
+
+
+def label_of(stream: Stream, stored: StoredPosterior) -> str:
+    """What a count is called: an interval by its key, a release by its date."""
+    return stored.key if stream.shape == "calendar" else stored.at.isoformat()
+
+
+def _say_head(stream: Stream) -> None:
+    say(stream.id if stream.title == stream.id else f"{stream.title} ({stream.id})")
+
+
+def _cells(stored: StoredPosterior, labels: Mapping[int, str]) -> list[Cell]:
+    return [
+        stored.place,
+        labels.get(stored.counted, stored.key),
+        stored.count,
+        quantiles_text(stored.level),
+        probability_text(stored.recent_shift),
+        stored.run_length_mode,
+        run_start_text(run_start(as_posterior(stored)), labels),
+        probability_text(stored.one_off),
+    ]

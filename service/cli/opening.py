@@ -8,7 +8,7 @@ from zoneinfo import ZoneInfo
 
 from sqlalchemy import Connection
 
-from config.loading import load_settings
+from config.loading import load_settings, read_settings
 from config.settings import Settings
 from service.cli.errors import UnknownName
 from service.cli.options import Given
@@ -41,8 +41,8 @@ def writing(given: Given) -> Iterator[Connection]:
             yield connection
 
 
-def settings_of(given: Given) -> Settings:
-    """The settings, checked.
+def settings_with_secrets(given: Given) -> Settings:
+    """The settings with all that they refer to, for what reaches sources and outlets.
 
     Raises
     ------
@@ -50,6 +50,11 @@ def settings_of(given: Given) -> Settings:
         With all that is wrong with them.
     """
     return load_settings(given.settings, os.environ)
+
+
+def settings_of(given: Given) -> Settings:
+    """The settings alone: whoever only looks need not know the daemon's secrets. Raises as the other does."""
+    return read_settings(given.settings)
 
 
 def database_of(given: Given) -> str:

@@ -1,15 +1,18 @@
 """A replay as people read it: what was noticed first, then the counts at a glance, then row by row."""
 
+from detectors.posterior import Quantiles
+from service.cli.figures import LEVEL_COLUMN, probability_text, quantiles_text
 from service.cli.show import Cell, blocks, say, show_table, width
 from service.cli.sparkline import sparkline
 from service.replay.report import ObservationLine, Report
-from service.replay.words import CAUTION, alert_sentence, level_text, summary_sentence, too_short_sentence
+from service.replay.words import CAUTION, alert_sentence, summary_sentence, too_short_sentence
 
-COLUMNS = ("row", "at", "count", "shift", "run", "level (5 to 95 %)", "one-off", "log p", "pit")
+COLUMNS = ("row", "at", "count", "shift", "run", LEVEL_COLUMN, "one-off", "log p", "pit")
 LEGEND = (
-    "shift: probability of a recent shift; run: most probable run length, in counts; one-off: probability "
-    "that the count is one; log p: log probability of the count, given those before it; pit: predictive "
-    "distribution function just below and at the count."
+    "level: as filtered from the counts so far; shift: probability of a recent shift not announced yet; "
+    "run: most probable run length, in counts; one-off: probability that the count is one; log p: log "
+    "probability of the count, given those before it; pit: predictive distribution function just below and "
+    "at the count."
 )
 
 
@@ -45,7 +48,7 @@ def _cells(line: ObservationLine) -> list[Cell]:
         line.count,
         _probability(line.recent_shift),
         line.run_length_mode,
-        None if line.level is None else level_text(line.level),
+        None if line.level is None else quantiles_text(Quantiles(*line.level)),
         _probability(line.one_off),
         line.log_predictive,
         None if line.pit is None else pit_text(line.pit),
@@ -53,4 +56,4 @@ def _cells(line: ObservationLine) -> list[Cell]:
 
 
 def _probability(value: float | None) -> Cell:
-    return None if value is None else f"{value:.3f}"
+    return None if value is None else probability_text(value)

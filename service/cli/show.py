@@ -67,10 +67,10 @@ def cell_text(cell: Cell) -> str:
 
 
 def number_text(value: float) -> str:
-    """A figure to four digits, large ones in full and with spaces between thousands."""
+    """A figure to four digits, large ones in full and with commas between thousands, as in alerts."""
     # Figures that rounding lifts to the next thousand belong to it.
     if abs(value) >= 999.95:
-        return f"{value:,.0f}".replace(",", " ")
+        return f"{value:,.0f}"
     return f"{value:.3f}" if abs(value) < 1 else f"{value:.4g}"
 
 

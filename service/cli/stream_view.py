@@ -1,69 +1,54 @@
-"""Streams, their stored history and their shifts, for people and for machines. Pure."""
+"""Streams as people and machines read them."""
 
-from collections.abc import Mapping
+from collections import Counter
+from collections.abc import Sequence
 
-from detectors.posterior import Quantiles, RunLengths, Weighted
-from service.cli.show import Cell, number_text
-from storage.codec import decode_history
-from storage.posteriors import StoredPosterior
-from storage.shifts import Shift
-from storage.streams import Stream
+from service.cli.figures import LEVEL_COLUMN, figures_json, probability_text, quantiles_text
+from service.cli.show import Cell, say, show_table
+from service.cli.standings import StreamStanding
 
-STREAM_COLUMNS = (
+COLUMNS = (
     "stream",
     "title",
-    "slate",
-    "counts",
+    "stands",
     "newest",
     "count",
-    "recent shift",
-    "level (5 to 95 %)",
+    LEVEL_COLUMN,
+    "shift",
+    "counts",
+    "slate",
     "hushed until",
 )
-HISTORY_COLUMNS = (
-    "at",
-    "count",
-    "shift",
-    "run",
-    "run lengths",
-    "level (5 to 95 %)",
-    "one-off",
-    "log p",
+ONLY_IF_THERE = frozenset({"title", "hushed until"})
+LEGEND = (
+    "level: as filtered from the counts so far; shift: probability of a recent shift not announced yet; "
+    "counts: how many were folded."
 )
-SHIFT_COLUMNS = (
-    "shift",
-    "title",
-    "since",
-    "noticed at",
-    "probability",
-    "level before",
-    "level after",
-    "state",
-    "origin",
-    "told",
-)
-MOST_GROUPS = 3
-SMALLEST_SHARE = 0.05
+NOT_DESCRIBED = "no longer in the settings"
 
 
-def stream_cells(stream: Stream, newest: StoredPosterior | None) -> list[Cell]:
-    """A line of `streams`."""
-    head: list[Cell] = [stream.id, stream.title, stream.slate]
-    if newest is None:
-        return [*head, 0, None, None, None, None, stream.hushed_until_utc]
-    return [
-        *head,
-        newest.counted,
-        newest.key,
-        newest.count,
-        probability_text(newest.recent_shift),
-        quantiles_text(newest.level),
-        stream.hushed_until_utc,
-    ]
+def show_streams(standings: Sequence[StreamStanding]) -> None:
+    """A table; columns that tell nothing are left out of it."""
+    lines = [_cells(one) for one in standings]
+    there = [place for place, name in enumerate(COLUMNS) if _tells(name, [line[place] for line in lines])]
+    show_table([COLUMNS[place] for place in there], [[line[place] for place in there] for line in lines])
+    if standings:
+        say("")
+        say(summary(standings))
+        say(LEGEND)
 
 
-def stream_json(stream: Stream, newest: StoredPosterior | None) -> dict[str, object]:
-    """A stream with what was last said of it."""
+def summary(standings: Sequence[StreamStanding]) -> str:
+    """How many streams stand how."""
+    counted = Counter(_stands(one) for one in standings)
+    ordered = sorted(counted.items(), key=lambda item: (-item[1], item[0]))
+    streams = "1 stream" if len(standings) == 1 else f"{len(standings)} streams"
+    return f"{streams}: {', '.join(f'{number} {word}' for word, number in ordered)}."
+
+
+def stream_json(one: StreamStanding) -> dict[str, object]:
+    """A stream with how it stands and what was last said of it."""
+    stream, newest = one.stream, one.newest
     return {
         "id": stream.id,
         "title": stream.title,
@@ -71,6 +56,8 @@ def stream_json(stream: Stream, newest: StoredPosterior | None) -> dict[str, obj
         "split": stream.split,
         "slate": stream.slate,
         "shape": stream.shape,
+        "stands": None if one.stands is None else str(one.stands),
+        "in_settings": one.stands is not None,
         "first_read": stream.first_read_utc,
         "last_seen": stream.last_seen_utc,
         "hushed_until": stream.hushed_until_utc,
@@ -79,136 +66,27 @@ def stream_json(stream: Stream, newest: StoredPosterior | None) -> dict[str, obj
     }
 
 
-def history_cells(stored: StoredPosterior) -> list[Cell]:
-    """A line of `history`."""
-    return [
-        stored.key,
-        stored.count,
-        probability_text(stored.recent_shift),
-        stored.run_length_mode,
-        run_lengths_text(decode_history(stored.history).run_lengths),
-        quantiles_text(stored.level),
-        probability_text(stored.one_off),
-        stored.log_predictive,
-    ]
+def _tells(column: str, cells: Sequence[Cell]) -> bool:
+    different = set(cells)
+    if column == "slate":
+        return len(different) > 1
+    return column not in ONLY_IF_THERE or different not in (set(), {None})
 
 
-def history_json(stored: StoredPosterior) -> dict[str, object]:
-    """One stored posterior with the whole run-length posterior of its observation."""
-    kept = decode_history(stored.history)
-    return {
-        **figures_json(stored),
-        "run_lengths": run_lengths_json(kept.run_lengths),
-        "dispersion": weighted_json(kept.dispersion),
-        "wander": weighted_json(kept.wander),
-        "written": stored.written_utc,
-        "fingerprint": stored.fingerprint,
-    }
+def _cells(one: StreamStanding) -> list[Cell]:
+    stream, newest = one.stream, one.newest
+    title = None if stream.id == stream.title or stream.id.endswith(f"/{stream.title}") else stream.title
+    figures: list[Cell] = [None, None, None, None, 0]
+    if newest is not None:
+        figures = [
+            newest.key if stream.shape == "calendar" else newest.at,
+            newest.count,
+            quantiles_text(newest.level),
+            probability_text(newest.recent_shift),
+            newest.counted,
+        ]
+    return [stream.id, title, _stands(one), *figures, stream.slate, stream.hushed_until_utc]
 
 
-def figures_json(stored: StoredPosterior) -> dict[str, object]:
-    """The figures of one stored posterior, named as `replay` names them."""
-    return {
-        "key": stored.key,
-        "at": stored.at,
-        "position": stored.position,
-        "counted": stored.counted,
-        "count": stored.count,
-        "recent_shift": stored.recent_shift,
-        "run_length_mode": stored.run_length_mode,
-        "level": quantiles_json(stored.level),
-        "one_off": stored.one_off,
-        "log_predictive": stored.log_predictive,
-        "pit": stored.pit,
-    }
-
-
-def shift_cells(shift: Shift, titles: Mapping[str, str]) -> list[Cell]:
-    """A line of `shifts`."""
-    return [
-        shift.id,
-        titles.get(shift.stream_id, shift.stream_id),
-        shift.start_key,
-        shift.announced_key,
-        probability_text(shift.probability),
-        quantiles_text(shift.level_before),
-        quantiles_text(shift.level_after),
-        shift.state,
-        "found in history" if shift.origin == "history" else shift.origin,
-        shift.told_utc,
-    ]
-
-
-def shift_json(shift: Shift, titles: Mapping[str, str]) -> dict[str, object]:
-    """A shift with all its figures; levels are filtered ones."""
-    return {
-        "id": shift.id,
-        "stream": shift.stream_id,
-        "title": titles.get(shift.stream_id),
-        "origin": shift.origin,
-        "state": shift.state,
-        "start": {"key": shift.start_key, "at": shift.start_at, "position": shift.start_position},
-        "announced": {
-            "key": shift.announced_key,
-            "at": shift.announced_at,
-            "position": shift.announced_position,
-        },
-        "recorded": shift.announced_utc,
-        "region": shift.region,
-        "probability": shift.probability,
-        "level_before": quantiles_json(shift.level_before),
-        "level_after": quantiles_json(shift.level_after),
-        "late": shift.late,
-        "told": shift.told_utc,
-    }
-
-
-def quantiles_json(level: Quantiles) -> tuple[float, float, float]:
-    """The 5 %, 50 % and 95 % quantiles."""
-    return (level.low, level.mid, level.high)
-
-
-def quantiles_text(level: Quantiles) -> str:
-    """A level with its range."""
-    return f"{number_text(level.mid)} ({number_text(level.low)} to {number_text(level.high)})"
-
-
-def probability_text(value: float) -> str:
-    """A probability to three places."""
-    return f"{value:.3f}"
-
-
-def run_lengths_text(run_lengths: RunLengths) -> str:
-    """The most probable groups of run lengths, and whether one is the first run."""
-    groups = sorted(run_lengths_json(run_lengths), key=lambda group: -group["probability"])
-    shown = [group for group in groups[:MOST_GROUPS] if group["probability"] >= SMALLEST_SHARE] or groups[:1]
-    return ", ".join(map(_group_text, shown))
-
-
-def run_lengths_json(run_lengths: RunLengths) -> list[dict[str, float]]:
-    """The groups of a run-length posterior, shortest first."""
-    last = len(run_lengths.probability) - 1
-    triples = zip(run_lengths.shortest, run_lengths.longest, run_lengths.probability, strict=True)
-    return [
-        {
-            "shortest": shortest,
-            "longest": longest,
-            "probability": probability,
-            "first_run": run_lengths.holds_first_run and place == last,
-        }
-        for place, (shortest, longest, probability) in enumerate(triples)
-    ]
-
-
-def weighted_json(weighted: Weighted) -> list[dict[str, object]]:
-    """Values with their probabilities; infinity, which JSON lacks, as the word for that limit."""
-    return [
-        {"value": "poisson" if value == float("inf") else value, "probability": probability}
-        for value, probability in zip(weighted.value, weighted.probability, strict=True)
-    ]
-
-
-def _group_text(group: dict[str, float]) -> str:
-    shortest, longest = int(group["shortest"]), int(group["longest"])
-    lengths = f"{shortest}" if shortest == longest else f"{shortest} to {longest}"
-    return f"{'first run' if group['first_run'] else lengths}: {group['probability']:.2f}"
+def _stands(one: StreamStanding) -> str:
+    return NOT_DESCRIBED if one.stands is None else str(one.stands)

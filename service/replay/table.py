@@ -59,7 +59,7 @@ def read_table(path: Path, zone: ZoneInfo | None, monotonic: Callable[[], float]
     plan = CsvPlan(path.name, FilePlace(path), fields, zone or ZoneInfo("UTC"))
     document = read_csv(plan, Validators(), monotonic)
     if not document.rows:
-        raise NothingToReplay(path, len(document.kept_out))
+        raise NothingToReplay(path.name, len(document.kept_out))
     return Table(tuple(map(_entry, document.rows)), document.kept_out, there)
 
 

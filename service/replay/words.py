@@ -1,31 +1,24 @@
 """The alerts of a replay as sentences. Pure."""
 
+from detectors.posterior import Quantiles
 from service.replay.report import AlertLine, Report
+from service.tell.effect import moved_words
+from service.tell.words import probability_words
 
 CAUTION = (
-    "Levels are filtered figures with their 5 % and 95 % quantiles. A date in common is not a cause, and a "
+    "Filtered levels rest on the counts that had come by then. A date in common is not a cause, and a "
     "decision about people's work needs more than a chart."
 )
 
 
 def alert_sentence(alert: AlertLine, report: Report) -> str:
-    """What moved, by how much and since when, and when it was noticed."""
+    """What moved, by how much and since when, and when it was noticed: in the words of an alert."""
     start, announced = (_place(report, index) for index in (alert.start_index, alert.announced_index))
-    change = alert.level_after[1] / alert.level_before[1] - 1.0
-    moved = "rose" if change > 0.0 else "fell"
+    moved = moved_words(Quantiles(*alert.level_before), Quantiles(*alert.level_after))
     return (
-        f"The level {moved} by about {_percent(abs(change))}, from {level_text(alert.level_before)} to "
-        f"{level_text(alert.level_after)}, most probably from {start} on; noticed at {announced} with "
-        f"probability {alert.probability:.3f}."
+        f"The filtered level {moved} counts per {_unit(report)}, most probably from {start}; noticed at "
+        f"{announced}; {probability_words(alert.probability)}."
     )
-
-
-def level_text(level: tuple[float, float, float]) -> str:
-    """A level with its range."""
-    low, mid, high = (
-        f"{value:,.0f}".replace(",", " ") if value >= 100 else f"{value:.3g}" for value in level
-    )
-    return f"{mid} ({low} to {high})"
 
 
 def summary_sentence(report: Report) -> str:
@@ -33,7 +26,7 @@ def summary_sentence(report: Report) -> str:
     counts = sum(line.count is not None for line in report.observations)
     missing = len(report.observations) - counts
     rows = f"{counts} counts" + (f", {missing} missing or kept out" if missing else "")
-    spacing = f"one per {report.interval}" if report.shape == "calendar" else "one per release"
+    spacing = f"one per {_unit(report)}"
     alerts = {0: "no alert", 1: "1 alert"}.get(len(report.alerts), f"{len(report.alerts)} alerts")
     return f"{rows}, {spacing}: {alerts}."
 
@@ -51,5 +44,5 @@ def _place(report: Report, index: int) -> str:
     return f"{report.observations[index].at} (row {index})"
 
 
-def _percent(share: float) -> str:
-    return f"{share * 100:.0f} %" if share < 10.0 else f"{share + 1:.3g} times"
+def _unit(report: Report) -> str:
+    return report.interval if report.shape == "calendar" and report.interval else "release"

@@ -106,10 +106,12 @@ def _calendar(
     reaches: At | None,
 ) -> Observed:
     by_position = _by_position(plan.id, shape, readings)
-    if not by_position:
-        return _observed([], [], 0)
     over = last_over(shape.axis, now - shape.settling)
-    first, end = min(by_position), min(_last_known(shape, by_position, reaches), over)
+    # What was put in ahead waits, and says nothing of the intervals before it.
+    begun = [position for position in by_position if position <= position_of(shape.axis, now)]
+    if not begun:
+        return _observed([], [], len(by_position))
+    first, end = min(begun), min(_last_known(shape, begun, reaches), over)
     absent = end - first + 1 - sum(position <= end for position in by_position)
     if absent > MOST_FILLED:
         raise TooManyAbsent(plan.id, absent)

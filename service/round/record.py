@@ -48,8 +48,8 @@ def record(conn: Connection, result: Result, now: datetime.datetime) -> tuple[Sh
     supersede_from(conn, result.stream_id, result.folded.begun, now=now)
     write_posteriors(conn, result.stream_id, _posteriors(result), now=now)
     _keep_checkpoints(conn, result, now)
-    if before != result.fingerprint:
-        set_fingerprint(conn, result.stream_id, result.fingerprint)
+    set_fingerprint(conn, result.stream_id, result.fingerprint)
+    if before not in (None, result.fingerprint):
         # Whoever is folding under the settings before these must begin again, or the two would mix.
         bump_epoch(conn, result.stream_id)
     return _record_shifts(conn, result)

@@ -1,20 +1,32 @@
-"""How much a level moved, in words: a share for falls and small rises, so many times for large ones. Pure."""
+"""How much a level moved, in words: a share for falls and small rises, so many times for large ones. Pure.
+
+A level that reaches down to the lowest one that can be told apart is known from above only: it is written as
+"under" its 95 % quantile, and no ratio is made of it.
+"""
 
 import math
 
 from detectors.posterior import Quantiles
-from service.tell.rounding import NOTHING, SHARE_OF_WIDTH, Between, rounded
+from detectors.spacing import LOWEST_LEVEL
+from service.tell.rounding import SHARE_OF_WIDTH, Between, rounded
 
 SMALLEST_SHARE = 0.01
 TIMES_FROM = 2.0
+BOUNDED_BELOW = 2 * LOWEST_LEVEL
 
 
-def effect_words(before: Quantiles, after: Quantiles) -> str:
+def moved_words(before: Quantiles, after: Quantiles) -> str:
+    """Such as "fell by about 40 %, from about 1,050 to about 640" or "fell from about 1,050 to under 1.1"."""
+    levels = _levels_words(before, after)
+    if _is_bound(before) or _is_bound(after):
+        return f"{_direction(before, after)} {levels}"
+    return f"{_effect_words(before, after)}, {levels}"
+
+
+def _effect_words(before: Quantiles, after: Quantiles) -> str:
     """Such as "fell by about 40 %" or "rose to about 90 times what it was"."""
     if not _usable(before) or not _usable(after):
         return "moved"
-    if before.mid < NOTHING or after.mid < NOTHING:
-        return _from_or_to_nothing(before.mid, after.mid)
     ratio = after.mid / before.mid
     if abs(ratio - 1) < SMALLEST_SHARE:
         return "moved by less than 1 %"
@@ -25,22 +37,38 @@ def effect_words(before: Quantiles, after: Quantiles) -> str:
     return f"{'fell' if ratio < 1 else 'rose'} by about {rounded(_percent(before, after))} %"
 
 
-def levels_words(before: Quantiles, after: Quantiles) -> str:
+def _levels_words(before: Quantiles, after: Quantiles) -> str:
     """Such as "from about 1,050 to about 640"; the two never read alike unless they are."""
     difference = abs(after.mid - before.mid)
     finest = difference if math.isfinite(difference) and difference > 0 else math.inf
     return f"from {_level(before, finest)} to {_level(after, finest)}"
 
 
-def _from_or_to_nothing(before: float, after: float) -> str:
-    if before < NOTHING and after < NOTHING:
+def _direction(before: Quantiles, after: Quantiles) -> str:
+    """Which way it went, where one level is a bound; of two bounds nobody can say."""
+    if _is_bound(before) and _is_bound(after):
         return "moved"
-    return "rose from nothing" if before < NOTHING else "fell to nothing"
+    if _is_bound(after):
+        return "fell" if after.mid < before.mid else "moved"
+    return "rose" if before.mid < after.mid else "moved"
+
+
+def _is_bound(level: Quantiles) -> bool:
+    return level.low <= BOUNDED_BELOW and math.isfinite(level.high)
 
 
 def _level(level: Quantiles, finest: float) -> str:
+    if _is_bound(level):
+        return f"under {_bound(max(level.high, LOWEST_LEVEL))}"
     words = rounded(Between(level.mid, level.low, level.high), finest=finest)
-    return words if words in ("0", "unknown") else f"about {words}"
+    return words if words == "unknown" else f"about {words}"
+
+
+def _bound(value: float) -> str:
+    """Two digits, rounded up, since it is a bound."""
+    step = math.pow(10.0, math.floor(math.log10(value)) - 1)
+    decimals = max(0, -math.floor(math.log10(step) + 1e-9))
+    return f"{math.ceil(value / step - 1e-9) * step:,.{decimals}f}"
 
 
 def _times(before: Quantiles, after: Quantiles) -> Between:
@@ -70,4 +98,4 @@ def _half_log_width(level: Quantiles) -> float:
 
 
 def _usable(level: Quantiles) -> bool:
-    return math.isfinite(level.mid) and level.mid >= 0
+    return math.isfinite(level.mid) and level.mid > 0

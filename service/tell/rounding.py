@@ -35,7 +35,9 @@ def rounded(figure: Between, *, finest: float = math.inf) -> str:
         return "0"
     step = step_of(figure, finest=finest)
     decimals = max(0, -math.floor(math.log10(step) + 1e-9))
-    return f"{round(figure.value / step) * step:,.{decimals}f}"
+    shown = round(figure.value / step) * step
+    # The largest floats round up to infinity.
+    return f"{shown:,.{decimals}f}" if math.isfinite(shown) else "unknown"
 
 
 def step_of(figure: Between, *, finest: float = math.inf) -> float:

@@ -3,7 +3,7 @@
 import math
 
 from service.tell.dates import instant_words, since_words
-from service.tell.effect import effect_words, levels_words
+from service.tell.effect import moved_words
 from service.tell.plain import plain
 from service.tell.story import ShiftStory
 
@@ -16,8 +16,8 @@ CAUTION = (
 def sentence(story: ShiftStory) -> str:
     """The alert in one sentence, with a second one if it comes late."""
     first = (
-        f"{title_words(story)}: the filtered level {effect_words(story.level_before, story.level_after)}, "
-        f"{levels_words(story.level_before, story.level_after)} {unit_words(story)}, "
+        f"{title_words(story)}: the filtered level {moved_words(story.level_before, story.level_after)} "
+        f"{unit_words(story)}, "
         f"{since_words(story)}; {probability_words(story.probability)}."
     )
     return f"{first} {late_words(story)}" if story.late else first

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from detectors.judge import Rule
 from detectors.model import Model
 from detectors.run_length import first_count, next_count
+from detectors.side_by_side import joined
 from detectors.simulation import as_observations
 
 FloatArray = NDArray[np.float64]
@@ -24,18 +25,34 @@ class Recorded:
     by_length: NDArray[np.float32]
 
 
-def record(model: Model, counts, longest: int) -> Recorded:
-    """Fold a stream and keep what the judge looks at."""
-    observations = as_observations(counts)
-    by_length = np.zeros((len(observations), longest), np.float32)
+def record(model: Model, streams, longest: int) -> list[Recorded]:
+    """Fold streams of one length, side by side once their counts are no longer few, and keep what the judge sees."""
+    observations = [as_observations(counts) for counts in streams]
+    kept = [np.zeros((len(counts), longest), np.float32) for counts in streams]
+    begun = min(model.accuracy.early + 1, len(observations[0]))
+    states = [_early(model, stream[:begun], into) for stream, into in zip(observations, kept, strict=True)]
+    if begun < len(observations[0]):
+        state = joined(states)
+        for place in range(begun, len(observations[0])):
+            state, step = next_count(state, tuple(stream[place] for stream in observations))
+            _keep(state, step, [into[place] for into in kept])
+    return [Recorded(by_length) for by_length in kept]
+
+
+def _early(model: Model, observations, into: NDArray[np.float32]):
     state, _ = first_count(model, (observations[0],))
     for place, observation in enumerate(observations[1:], start=1):
         state, step = next_count(state, (observation,))
-        length = state.counted - step.slots.newest + 1
-        recent = np.flatnonzero(step.slots.used & (length <= longest))
-        recent = recent[recent > 0]
-        by_length[place, length[recent] - 1] = step.run_mass[0, recent]
-    return Recorded(by_length)
+        _keep(state, step, [into[place]])
+    return state
+
+
+def _keep(state, step, rows: list[NDArray[np.float32]]) -> None:
+    length = state.counted - step.slots.newest + 1
+    recent = np.flatnonzero(step.slots.used & (length <= rows[0].size))
+    recent = recent[recent > 0]
+    for stream, row in enumerate(rows):
+        row[length[recent] - 1] = step.run_mass[stream, recent]
 
 
 def alarms(recorded: Recorded, rule: Rule) -> list[int]:

@@ -27,6 +27,7 @@ FLAT_COUNTS = 1000
 AFTER = (100, 400)
 WITHIN = (10, 20)
 PER_COUNT = 1e-3
+GROUP = 8
 
 
 @dataclass(frozen=True)
@@ -72,9 +73,9 @@ def counts_of(kind: str, seed: int, one_offs: OneOffs):
     return simulate(levels, DISPERSION, one_offs, random)
 
 
-def recorded(task: tuple[Model, str, int, int]) -> Recorded:
-    model, kind, seed, longest = task
-    return record(model, counts_of(kind, seed, ONE_OFFS), longest)
+def recorded(task: tuple[Model, str, range, int]) -> list[Recorded]:
+    model, kind, seeds, longest = task
+    return record(model, [counts_of(kind, seed, ONE_OFFS) for seed in seeds], longest)
 
 
 def measure(name: str, model: Model, rules: list[Rule], streams: int, pool) -> list[Figures]:
@@ -82,8 +83,9 @@ def measure(name: str, model: Model, rules: list[Rule], streams: int, pool) -> l
     longest = max(rule.window for rule in rules)
 
     def fold(kind: str, how_many: int) -> list[Recorded]:
-        tasks = [(model, kind, seed, longest) for seed in range(how_many)]
-        return list(pool.map(recorded, tasks, chunksize=4))
+        groups = [range(first, min(first + GROUP, how_many)) for first in range(0, how_many, GROUP)]
+        parts = pool.map(recorded, [(model, kind, seeds, longest) for seeds in groups])
+        return [one for part in parts for one in part]
 
     flat, wear = fold("flat", streams), fold("wear", streams)
     fallen = {before: fold(str(before), 2 * streams) for before in AFTER}

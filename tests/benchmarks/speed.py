@@ -15,6 +15,8 @@ from detectors.advance import advance, start
 from detectors.checkpoint_bytes import to_bytes
 from detectors.judge import Rule
 from detectors.model import Model
+from detectors.run_length import next_count
+from detectors.side_by_side import joined
 from detectors.simulation import OneOffs, as_observations, simulate
 from storage.codec import encode_history
 
@@ -86,9 +88,41 @@ def table(found) -> str:
     return "\n".join(lines)
 
 
+def side_by_side(level: float, dispersion: float, begun: int, counts: int, streams: int) -> float:
+    """How many times quicker a count is folded when streams are folded in one call."""
+    random = np.random.default_rng([int(level), int(dispersion)])
+    series = [
+        as_observations(simulate(np.full(begun + counts, level), dispersion, OneOffs(share=0.03), random))
+        for _ in range(streams)
+    ]
+    states = [advance(start(Model()), stream[:begun], Rule()).checkpoint.state for stream in series]
+    began = time.perf_counter()
+    for state, stream in zip(states, series, strict=True):
+        alone = state
+        for observation in stream[begun:]:
+            alone, _ = next_count(alone, (observation,))
+    between = time.perf_counter()
+    together = joined(states)
+    for place in range(begun, begun + counts):
+        together, _ = next_count(together, tuple(stream[place] for stream in series))
+    return (between - began) / (time.perf_counter() - between)
+
+
+def gains(streams: int = 8, counts: int = 40) -> str:
+    """A Markdown table of what folding streams side by side gains."""
+    lines = [
+        f"| level, dispersion | gain from {streams} in one call: after 30 counts | after 300 |",
+        "| --- | --- | --- |",
+    ]
+    for level, dispersion in ((10.0, 3.0), (1000.0, 6.0), (10_000.0, 100.0)):
+        gain = [side_by_side(level, dispersion, begun, counts, streams) for begun in (30, 300)]
+        lines.append(f"| {level:.0f}, {dispersion:.0f} | {gain[0]:.1f} | {gain[1]:.1f} |")
+    return "\n".join(lines)
+
+
 def main(seeds: int, largest: int) -> str:
-    """Run and return the table."""
-    return table(measure(seeds, largest))
+    """Run and return the tables."""
+    return table(measure(seeds, largest)) + "\n\n" + gains()
 
 
 if __name__ == "__main__":

@@ -12,8 +12,8 @@ from detectors.advance import Checkpoint, advance, start
 from detectors.checkpoint_bytes import from_bytes, to_bytes
 from detectors.errors import UnreadableCheckpoint
 from detectors.gap_prior import GapPrior
-from detectors.jump_prior import IndependentLevels, JumpPrior
 from detectors.judge import Rule
+from detectors.jump_prior import IndependentLevels, JumpPrior
 from detectors.model import Model
 from detectors.observation import Observation
 
@@ -72,7 +72,7 @@ def test_goes_on_bit_for_bit_from_every_place(name: str) -> None:
         restored = from_bytes(to_bytes(checkpoint), model)
         assert to_bytes(restored) == to_bytes(checkpoint)
         # Long enough to pass the next upkeep of the grids and the next merge; from some places to the end.
-        until = None if place % 10 == 0 else place + 6
+        until = None if place % 20 == 0 else place + 5
         onwards = advance(restored, observations[place:until], RULE)
         assert onwards.posteriors == whole.posteriors[place:until]
         if until is None:
@@ -104,10 +104,10 @@ def test_batches_do_not_matter() -> None:
     assert to_bytes(whole.checkpoint) == to_bytes(one_by_one)
 
 
-@pytest.mark.parametrize("place", [0, 1, 10, 22, 23, 24, 40, 49])
+@pytest.mark.parametrize("place", [0, 12, 23, 24, 40])
 def test_advancing_leaves_the_checkpoint_as_it_was(place: int) -> None:
     # A checkpoint is never changed, so one state can be taken on along several branches.
-    observations = stream(6, 50)
+    observations = stream(6, 44)
     checkpoint = advance(start(Model()), observations[:place], RULE).checkpoint
     before = to_bytes(checkpoint)
     first = advance(checkpoint, observations[place:], RULE)
@@ -120,7 +120,9 @@ def test_advancing_leaves_the_checkpoint_as_it_was(place: int) -> None:
 
 # What cannot be read
 
-DATA = {place: to_bytes(advance(start(Model()), stream(7, 40)[:place], RULE).checkpoint) for place in (0, 8, 40)}
+DATA = {
+    place: to_bytes(advance(start(Model()), stream(7, 40)[:place], RULE).checkpoint) for place in (0, 8, 40)
+}
 
 
 @pytest.mark.parametrize("place", DATA)
@@ -129,7 +131,9 @@ DATA = {place: to_bytes(advance(start(Model()), stream(7, 40)[:place], RULE).che
 def test_a_flipped_bit_is_noticed(place: int, where: float, bit: int) -> None:
     damaged = bytearray(DATA[place])
     damaged[int(where * len(damaged))] ^= 1 << bit
-    with pytest.raises(UnreadableCheckpoint, match=r"The checkpoint cannot be read: .*\. Fold the stream again"):
+    with pytest.raises(
+        UnreadableCheckpoint, match=r"The checkpoint cannot be read: .*\. Fold the stream again"
+    ):
         from_bytes(bytes(damaged), Model())
 
 

@@ -209,10 +209,19 @@ def test_poisson_is_the_limit() -> None:
 def test_prepared_rows_give_the_same(count: int, exposure: float) -> None:
     rng = np.random.default_rng(3)
     mean = 10.0 ** rng.uniform(-2, 9, 300)
-    dispersion = rng.choice([0.3, 4.0, 1e6, math.inf], 300)
-    rows = NegativeBinomialRows(mean, dispersion)
-    plain = log_negative_binomial(count, mean * exposure, dispersion)
+    laws, law = np.array([0.3, 4.0, 1e6, math.inf]), rng.integers(0, 4, 300)
+    rows = NegativeBinomialRows(mean, laws, law)
+    plain = log_negative_binomial(count, mean * exposure, laws[law])
     np.testing.assert_array_equal(rows.log_probability(count, exposure=exposure), plain)
+
+
+def test_prepared_rows_take_a_count_a_law_and_an_exposure_a_row() -> None:
+    rng = np.random.default_rng(4)
+    mean, exposure = 10.0 ** rng.uniform(0, 5, 200), rng.uniform(0.2, 3.0, 200)
+    laws, law = np.array([2.0, 2.0, math.inf]), rng.integers(0, 3, 200)
+    counts = np.array([0.0, 55.0, 1_200.0])
+    got = NegativeBinomialRows(mean, laws, law).log_probability(counts, exposure)
+    np.testing.assert_array_equal(got, log_negative_binomial(counts[law], mean * exposure, laws[law]))
 
 
 # Uncertain exposure

@@ -219,7 +219,9 @@ def test_unusable_age_and_gap() -> None:
         GapPrior(2, 50.0).shift_within([3], 0)
 
 
-@given(shape=st.integers(1, 8), stretch=st.floats(1.0, 1e3), age=st.integers(0, 10**8), gap=st.integers(1, 10**8))
+@given(
+    shape=st.integers(1, 8), stretch=st.floats(1.0, 1e3), age=st.integers(0, 10**8), gap=st.integers(1, 10**8)
+)
 @settings(max_examples=150, deadline=None)
 def test_a_chance_is_never_above_one(shape: int, stretch: float, age: int, gap: int) -> None:
     prior = GapPrior(shape, shape * stretch)

@@ -34,7 +34,7 @@ def said(advanced: Advanced) -> list[Posterior]:
 
 
 def slots_of(starts: list[int]) -> SimpleNamespace:
-    """A step whose slot 0 holds the first run and the others runs that start at the given counts; 0 is empty."""
+    """A step whose slot 0 holds the first run, the others runs from the given counts on; 0 is empty."""
     newest = np.array([1, *starts])
     return SimpleNamespace(slots=RunSlots(newest.copy(), newest, np.zeros(newest.size, dtype=np.int64)))
 
@@ -195,7 +195,9 @@ def test_floor_is_the_chance_that_a_renewal_process_was_renewed_lately(gap: GapP
     rng = np.random.default_rng(12)
     rule = Rule(window=40, lasting=3)
     runs, moment = 4_000, 2_000
-    ends = np.cumsum(rng.negative_binomial(gap.shape, gap.p, (runs, int(6 * moment / gap.mean))) + gap.shape, axis=1)
+    ends = np.cumsum(
+        rng.negative_binomial(gap.shape, gap.p, (runs, int(6 * moment / gap.mean))) + gap.shape, axis=1
+    )
     assert (ends[:, -1] > moment).all()
     born = np.where(ends <= moment, ends, 0).max(axis=1)
     length = moment - born + 1
@@ -219,11 +221,18 @@ def test_floor_is_what_the_filter_says_when_counts_say_nothing() -> None:
 
 
 @given(
-    st.lists(st.tuples(st.integers(0, 200), st.floats(1e-6, 1.0)), min_size=1, max_size=12, unique_by=lambda pair: pair[0]),
+    st.lists(
+        st.tuples(st.integers(0, 200), st.floats(1e-6, 1.0)),
+        min_size=1,
+        max_size=12,
+        unique_by=lambda pair: pair[0],
+    ),
     st.floats(0.05, 0.99),
 )
 @settings(max_examples=150, deadline=None)
-def test_region_is_the_smallest_set_that_holds_the_share(pairs: list[tuple[int, float]], share: float) -> None:
+def test_region_is_the_smallest_set_that_holds_the_share(
+    pairs: list[tuple[int, float]], share: float
+) -> None:
     positions, mass = (np.array(column) for column in zip(*pairs, strict=True))
     got = region(positions, mass, share)
     assert list(got) == sorted(set(got))

@@ -52,7 +52,7 @@ def from_1975(name: str, threshold: float) -> Advanced:
     ],
 )
 def test_the_series_are_whole(name: str, size: int, total: int) -> None:
-    # Sizes and the first three sums as the sources state them; the other sums guard against a slip of the pen.
+    # Sizes and first three sums as the sources state them; the others guard against a slip of the pen.
     counts = SERIES[name]["counts"]
     assert (len(counts), sum(counts)) == (size, total)
 
@@ -101,11 +101,11 @@ def test_coal_1891() -> None:
 
 
 def test_coal_the_published_mode_once_the_years_after_are_known() -> None:
-    # A filter's run start moves as years come in. By 1895 the mode is the published one, first year 1892, or
-    # a neighbour: 1891 has 0.245, 1890 0.185, 1889 0.143 as last year before the change.
-    after_ten_years = told("coal", 1851, threshold=0.8).posteriors[1905 - 1851]
-    assert after_ten_years is not None
-    assert 1905 - after_ten_years.run_length_mode + 1 in (1890, 1891, 1892)
+    # A filter's run start moves as years come in. Looking from 1905 the mode is the published one, first
+    # year 1892, or a neighbour: 1891 has 0.245, 1890 0.185, 1889 0.143 as last year before the change.
+    in_1905 = told("coal", 1851, threshold=0.8).posteriors[1905 - 1851]
+    assert in_1905 is not None
+    assert 1905 - in_1905.run_length_mode + 1 in (1890, 1891, 1892)
 
 
 def test_campylobacteriosis_84() -> None:

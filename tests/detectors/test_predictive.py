@@ -34,7 +34,7 @@ def expected_of(checkpoint: Checkpoint, position: int, count: int) -> tuple[floa
 @pytest.mark.parametrize("size", [26, 45, 120])
 @pytest.mark.parametrize(("level", "dispersion"), [(4.0, 50.0), (4.0, 2.0)])
 def test_predictive_probabilities_sum_to_one(level: float, dispersion: float, size: int) -> None:
-    # Each count may ask for another grid, and a jump beyond the ends of all of them is left out: not exactly 1.
+    # Each count may ask for another grid, and a jump beyond their ends is left out: not exactly 1.
     checkpoint = seen(level, dispersion, size)
     total = math.fsum(expected_of(checkpoint, size, count)[0] for count in range(250))
     assert total == pytest.approx(1.0, abs=2e-3)

@@ -20,6 +20,7 @@ from zoneinfo import ZoneInfo
 import numpy as np
 import pytest
 
+from detectors.gap_prior import GapPrior
 from detectors.judge import Rule
 from detectors.model import Model
 from service.deliver.loop import deliver_due
@@ -41,6 +42,17 @@ UTC = ZoneInfo("UTC")
 MONDAY = datetime.date(2025, 1, 6)
 SECRET = "whsec_MfKQ9r8GKYqrTwjUPD8ILPZIo2LaLaSw"  # the key of the specification's test vector
 WEEK = datetime.timedelta(weeks=1)
+
+# Stated here rather than left to the defaults, so that what is announced where stays as it is.
+WEEKS = CalendarShape(Axis(Interval("week"), UTC), "missing")
+RULE = Rule(threshold=0.9, window=40, lasting=4, fewest_counts=12)
+MODEL = Model(
+    gap=GapPrior(shape=2, mean=150.0),
+    one_off_share=0.02,
+    dispersions=(4.0, 8.0, 16.0, 32.0, 64.0),
+    wanders=((0.01, 1.0),),
+)
+PLAYS = FieldPlan("$.day", "$.plays", split="$.show")
 
 
 def levels(seed: int, *spans: tuple[float, int]) -> list[int]:
@@ -79,6 +91,8 @@ class Studio:
     asked: list[int] = field(default_factory=list)
     instants: list[str] = field(default_factory=list)
     by_show: dict[str, list[int]] = field(default_factory=dict)
+    now: Callable[[], str] | None = None
+    reached: threading.Event = field(default_factory=threading.Event)
 
     def weekly(self, show: str, counts: list[int | None], first: datetime.date = MONDAY) -> None:
         """Replaces a show's rows."""
@@ -115,6 +129,7 @@ class Desk:
     came: list[tuple[str, dict[str, object]]] = field(default_factory=list)
     refuse: int = 0
     forged: int = 0
+    arrived: threading.Event = field(default_factory=threading.Event)
 
     def take(self, headers: dict[str, str], body: bytes) -> int:
         signed = f"{headers['webhook-id']}.{headers['webhook-timestamp']}.".encode() + body
@@ -127,6 +142,7 @@ class Desk:
             self.refuse -= 1
             return 503
         self.came.append((headers["webhook-id"], json.loads(body)))
+        self.arrived.set()
         return 200
 
 
@@ -153,7 +169,8 @@ def _handler(inner: object) -> type[BaseHTTPRequestHandler]:
     class Handler(BaseHTTPRequestHandler):
         def do_GET(self) -> None:
             assert isinstance(inner, Studio)
-            instant = self.headers.get("x-instant")
+            inner.reached.set()
+            instant = self.headers.get("x-instant") or (inner.now and inner.now())
             if instant is not None:
                 inner.instants.append(instant)
                 inner.rows = inner.rows_by(instant)
@@ -194,13 +211,13 @@ def _handler(inner: object) -> type[BaseHTTPRequestHandler]:
 class Settings:
     """What a settings file would say."""
 
-    shape: CalendarShape | ReleaseShape = CalendarShape(Axis(Interval("week"), UTC), "missing")
-    rule: Rule = Rule()
-    model: Model = Model()
+    shape: CalendarShape | ReleaseShape = WEEKS
+    rule: Rule = RULE
+    model: Model = MODEL
     left_out: frozenset[str] = frozenset()
     every: datetime.timedelta = WEEK
     deadline_seconds: float = 10.0
-    fields: FieldPlan = FieldPlan("$.day", "$.plays", split="$.show")
+    fields: FieldPlan = PLAYS
 
 
 def round_plan(settings: Settings, address: str, name: str = "plays") -> RoundPlan:
@@ -231,7 +248,9 @@ def round_plan(settings: Settings, address: str, name: str = "plays") -> RoundPl
             mark,
         )
 
-    return RoundPlan(name, source, settings.every, stream_for, sorting=f"{settings.shape} {settings.left_out}")
+    return RoundPlan(
+        name, source, settings.every, stream_for, sorting=f"{settings.shape} {settings.left_out}"
+    )
 
 
 @dataclass
@@ -245,8 +264,8 @@ class World:
     settings: Settings = Settings()
     stop: threading.Event = field(default_factory=threading.Event)
 
-    def plan(self) -> RoundPlan:
-        return round_plan(self.settings, self.studio.address)
+    def plan(self, name: str = "plays") -> RoundPlan:
+        return round_plan(self.settings, self.studio.address, name)
 
     def bench(self, store: Store | None = None) -> Bench:
         return Bench(store or self.store, self.clock, (Taker("desk"),), self.stop)

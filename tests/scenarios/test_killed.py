@@ -66,7 +66,12 @@ def walker(studio, desk, secret: str, counts_of: Callable[..., list[int]]) -> It
     command = [sys.executable, str(Path(__file__).with_name("walker.py"))]
     settings = os.environ | {"PYTHONPATH": str(ROOT), "OPENBLAS_NUM_THREADS": "1"}
     with subprocess.Popen(
-        command, stdin=subprocess.PIPE, stdout=subprocess.PIPE, stderr=subprocess.DEVNULL, text=True, env=settings
+        command,
+        stdin=subprocess.PIPE,
+        stdout=subprocess.PIPE,
+        stderr=subprocess.DEVNULL,
+        text=True,
+        env=settings,
     ) as process:
         yield Walker(process, studio.address, desk.address, secret)
         assert process.stdin is not None
@@ -147,7 +152,9 @@ def _ended(path: Path) -> Ended:
     epoch = datetime.datetime(2000, 1, 1, tzinfo=datetime.UTC)
     with open_store(str(path)) as store, store.reading() as conn:
         return Ended(
-            sorted((one.stream_id, one.key, one.count) for name in STREAMS for one in all_readings(conn, name)),
+            sorted(
+                (one.stream_id, one.key, one.count) for name in STREAMS for one in all_readings(conn, name)
+            ),
             [
                 replace(row, id=0, reading_id=None, written_utc=epoch)
                 for name in STREAMS

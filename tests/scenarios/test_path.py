@@ -1,8 +1,8 @@
 """From counts to an alert, through every stage: a real source, a real database file, a real receiver."""
 
 import datetime
+from dataclasses import replace
 
-from detectors.judge import Rule
 from service.round.again import fold_again
 from storage.checkpoints import list_checkpoints
 from storage.outbox import list_deliveries
@@ -197,10 +197,10 @@ def test_changed_settings_tell_nothing_that_was_there_before(world, counts_of) -
     world.at_week(37)
     world.poll()
     # With this threshold nothing rings.
-    world.change(rule=Rule(threshold=0.9999999))
+    world.change(rule=replace(world.settings.rule, threshold=0.9999999))
     world.live("quay", counts, 38)
     assert world.desk.came == []
-    world.change(rule=Rule(threshold=0.9))
+    world.change(rule=replace(world.settings.rule, threshold=0.9))
     world.poll()
     (shift,) = world.shifts()
     assert shift.origin == HISTORY
@@ -216,7 +216,7 @@ def test_a_told_shift_found_again_under_other_settings_is_not_told_again(world, 
     assert len(world.desk.came) == 1
     epoch = _epoch(world)
     # Announced at another count now, so that its id would be another; the date regions overlap.
-    world.change(rule=Rule(lasting=7))
+    world.change(rule=replace(world.settings.rule, lasting=7))
     world.poll()
     assert _epoch(world) > epoch
     assert [shift.origin for shift in world.shifts()] == [LIVE]

@@ -1,8 +1,9 @@
 """Walks the path in a process of its own and kills itself at a commit. A script; run by test_killed.py.
 
-Each line on standard input is a walk in JSON: the database, the addresses of source and receiver, the instants
-to walk through, and at which commit to die, before or after it (0: never). Each walk is a forked child, so that
-the packages are loaded only once. The answer is a line: the child's exit status, or minus the signal.
+Each line on standard input is a walk in JSON: the database, the addresses of source and receiver, the
+instants to walk through, and at which commit to die, before or after it (0: never). Each walk is a forked
+child, so that the packages are loaded only once. The answer is a line: the child's exit status, or minus the
+signal.
 """
 
 import datetime
@@ -32,6 +33,8 @@ from storage.rounds import break_off_unfinished
 
 UTC = ZoneInfo("UTC")
 WEEKS = CalendarShape(Axis(Interval("week"), UTC), "missing")
+RULE = Rule(threshold=0.9, window=40, lasting=4, fewest_counts=12)
+MODEL = Model(dispersions=(4.0, 8.0, 16.0, 32.0, 64.0), wanders=((0.01, 1.0),))
 
 
 class WalkClock:
@@ -82,11 +85,11 @@ def plan_at(address: str, instant: str) -> RoundPlan:
 
 
 def stream_for(split: str | None) -> StreamPlan | None:
-    return StreamPlan(f"plays/{split}", "plays", split, str(split), "house", WEEKS, Model(), Rule(), "one")
+    return StreamPlan(f"plays/{split}", "plays", split, str(split), "house", WEEKS, MODEL, RULE, "one")
 
 
 def die_at(store: Store, commit: int, side: str) -> None:
-    """Puts a counter around every commit of the writer; the count goes to standard error at the end."""
+    """Puts a counter around every commit of the writer."""
     dialect = store.engine.dialect
     real: Callable[[Any], None] = dialect.do_commit
     done, lock = [0], threading.Lock()

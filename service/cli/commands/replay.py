@@ -8,7 +8,7 @@ from service.cli.options import json_option
 
 
 @click.command("replay", short_help="Run the counts of a CSV file through the detector.")
-@click.argument("file", type=click.Path(path_type=Path, dir_okay=False))
+@click.argument("file", type=click.Path(path_type=Path, dir_okay=False, allow_dash=True))
 @json_option
 @click.option(
     "--interval",
@@ -45,7 +45,7 @@ def command(
     wander: str | None,
     dispersion: str | None,
 ) -> None:
-    """Run the counts of FILE through the detector, in memory, as if they arrived one at a time.
+    """Run the counts of FILE (- for standard input) through the detector, as if they arrived one at a time.
 
     FILE is a CSV table with the columns at (a date or date-time of ISO 8601) and count, and optionally
     release and exposure. An empty count is a missing one and keeps its row; an empty exposure is 1. Rows may
@@ -56,6 +56,7 @@ def command(
     from service.cli.replay_view import show_report
     from service.cli.show import progress, show_json
     from service.replay.axis import Spacing
+    from service.replay.given import file_given
     from service.replay.parameters import Wish, model_for, read_dispersions, read_wanders, read_zone, rule_for
     from service.replay.table import read_table
     from service.replay.whole import replay_table
@@ -74,7 +75,8 @@ def command(
     )
     model, rule = model_for(wish), rule_for(wish)
     spacing = Spacing(interval, None if zone is None else read_zone(zone))
-    table = read_table(file, spacing.zone, monotonic)
+    with file_given(file) as place:
+        table = read_table(place, spacing.zone, monotonic)
     with progress("Replaying", len(table.entries)) as step:
         answer = replay_table(table, spacing, model, rule, step=step)
     if as_json:

@@ -19,8 +19,8 @@ from service.cli.options import Given, json_option, limit_option, settings_optio
 def command(given: Given, stream: str | None, origin: str | None, limit: int, as_json: bool) -> None:
     """Shifts of level, the newest first. Levels are filtered figures, as they stood when it was noticed."""
     from service.cli.opening import reading, require_stream
-    from service.cli.show import show_json, show_table
-    from service.cli.stream_view import SHIFT_COLUMNS, shift_cells, shift_json
+    from service.cli.shift_view import shift_json, show_shifts
+    from service.cli.show import show_json
     from storage.shifts import list_shifts
     from storage.streams import list_streams
 
@@ -31,4 +31,4 @@ def command(given: Given, stream: str | None, origin: str | None, limit: int, as
     if as_json:
         show_json([shift_json(shift, titles) for shift in shifts])
     else:
-        show_table(SHIFT_COLUMNS, [shift_cells(shift, titles) for shift in shifts])
+        show_shifts(shifts)

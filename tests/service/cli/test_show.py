@@ -16,10 +16,10 @@ from service.cli.show import cell_text, number_text, plain_lines, say, show_tabl
         (1.5, "1.5"),
         (12.3456, "12.35"),
         (999.94, "999.9"),
-        (999.96, "1 000"),
-        (1e6, "1 000 000"),
+        (999.96, "1,000"),
+        (1e6, "1,000,000"),
         (-3.14159, "-3.142"),
-        (-2500.0, "-2 500"),
+        (-2500.0, "-2,500"),
     ],
 )
 def test_figures_have_four_digits(value: float, text: str) -> None:
@@ -69,7 +69,7 @@ def test_on_a_terminal_figures_are_never_broken_however_narrow_it_is(
     capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
 ) -> None:
     _pretend_terminal(monkeypatch)
-    row = [f"{1000 + place} (900 to 1 234 567)" for place in range(8)]
+    row = [f"{1000 + place} (900 to 1,234,567)" for place in range(8)]
     show_table([f"level {place}" for place in range(8)], [row])
     lines = capsys.readouterr().out.splitlines()
     assert len(lines) == 2

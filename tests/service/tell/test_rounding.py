@@ -26,6 +26,7 @@ from service.tell.rounding import Between, rounded, step_of
         (5, 1, math.inf, "5.00"),
         (math.nan, 1, 2, "unknown"),
         (math.inf, 1, 2, "unknown"),
+        (1.797e308, 1.797e308, 1.797e308, "unknown"),
         (-39.2, -45, -33, "-39"),
     ],
 )

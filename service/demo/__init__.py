@@ -1,0 +1,1 @@
+"""An invented house with invented counts, watched at high speed on this machine alone."""
