@@ -16,6 +16,7 @@ from detectors.level_grid import LevelGrid
 from detectors.model import Model
 from detectors.observation import Observation
 from detectors.one_off import one_off_probability
+from detectors.spacing import resolvable_dispersion
 from detectors.wander_kernel import walk_matrix
 
 FloatArray = NDArray[np.float64]
@@ -149,21 +150,33 @@ class Bench:
             log_ordinary = log_negative_binomial(count, mean, dispersion)
         else:
             log_ordinary = self.rows.log_probability(self.over_pairs(exact), exposure)
-        negative_binomial = np.exp(log_ordinary)
-        share = self.model.one_off_share
-        one_off = share * one_off_probability(count, mean, self.model.one_off_tail)
-        total = (1.0 - share) * negative_binomial + one_off
+        total, one_off, ordinary = self._mixed(count, mean, log_ordinary)
         largest = np.maximum.reduceat(total, self.first_row)
-        return Likelihood(
-            total / self.over_rows(largest), one_off / total, negative_binomial, np.log(largest)
-        )
+        return Likelihood(total / self.over_rows(largest), one_off / total, ordinary, np.log(largest))
+
+    def log_likelihood_at(self, rows: IntArray, counts: Sequence[Observation]) -> FloatArray:
+        """Log probability of each stream's count at some of the nodes, shape of `rows`."""
+        stream = np.searchsorted(self.first_row, rows, side="right") - 1
+        count = np.array([float(one.count or 0) for one in counts])[stream]
+        mean = self.level[rows] * np.array([one.exposure for one in counts])[stream]
+        relative_sd = np.array([one.relative_sd for one in counts])[stream]
+        dispersion = effective_dispersion(self.row_dispersion[rows], relative_sd)
+        total, _, _ = self._mixed(count, mean, log_negative_binomial(count, mean, dispersion))
+        return np.log(np.maximum(total, 1e-300))
+
+    def _mixed(
+        self, count: FloatArray, mean: FloatArray, log_ordinary: FloatArray
+    ) -> tuple[FloatArray, FloatArray, FloatArray]:
+        share, ordinary = self.model.one_off_share, np.exp(log_ordinary)
+        one_off = share * one_off_probability(count, mean, self.model.one_off_tail)
+        return (1.0 - share) * ordinary + one_off, one_off, ordinary
 
 
 def bench_for(
     model: Model, dispersion: FloatArray, wander: FloatArray, first_pair: IntArray, grid: LevelGrid
 ) -> Bench:
     """Prepare the matrices and tables of a set of grids."""
-    level, row_dispersion = np.exp(grid.log_level), grid.spread(dispersion)
+    level, resolvable = np.exp(grid.log_level), resolvable_dispersion(grid.spacing, grid.highest, dispersion)
     return Bench(
         model=model,
         dispersion=dispersion,
@@ -171,7 +184,7 @@ def bench_for(
         first_pair=first_pair,
         grid=grid,
         level=level,
-        row_dispersion=row_dispersion,
-        rows=NegativeBinomialRows(level, dispersion, grid.pair),
+        row_dispersion=grid.spread(resolvable),
+        rows=NegativeBinomialRows(level, resolvable, grid.pair),
         jump=jump_step(model.jump, grid),
     )

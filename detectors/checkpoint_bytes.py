@@ -17,6 +17,7 @@ from detectors.level_grid import LevelGrid
 from detectors.model import MODEL_VERSION, Model
 from detectors.observation import Observation
 from detectors.posterior import Quantiles
+from detectors.recent_runs import RecentRun
 from detectors.run_length import first_count, next_count
 from detectors.run_slots import RunSlots
 
@@ -53,7 +54,7 @@ def to_bytes(checkpoint: Checkpoint) -> bytes:
     facts: dict[str, Any] = {"memory": _memory_facts(checkpoint.memory)}
     arrays: list[bytes] = []
     if state is not None and state.early:
-        facts["early"] = [[o.position, o.count, o.exposure, o.relative_sd] for (o,) in state.early]
+        facts["early"] = [_written(one) for (one,) in state.early]
     elif state is not None:
         facts["state"] = _state_facts(state)
         arrays = _state_arrays(state)
@@ -122,6 +123,10 @@ def _memory_facts(memory: Memory) -> list[Any]:
     ]
 
 
+def _written(one: Observation) -> list[Any]:
+    return [one.position, one.count, one.exposure, one.relative_sd]
+
+
 def _refolded(model: Model, counts: list[Observation]) -> FilterState:
     state, _ = first_count(model, (counts[0],))
     for observation in counts[1:]:
@@ -136,6 +141,7 @@ def _state_facts(state: FilterState) -> dict[str, Any]:
         "pairs": int(state.log_weight.size),
         "slots": int(state.run_factor.size),
         "kind": state.weights.dtype.str,
+        "recent": [[run.number, *_written(run.counts[0])] for run in state.recent],
     }
 
 
@@ -154,7 +160,12 @@ def _state_arrays(state: FilterState) -> list[bytes]:
         state.slots.newest,
         state.slots.start_position,
     )
-    return [a.tobytes() for a in parts] + [np.packbits(filled).tobytes(), state.weights[filled].tobytes()]
+    lately = [array.tobytes() for run in state.recent for array in (run.origin, run.log_scale)]
+    return (
+        [a.tobytes() for a in parts]
+        + lately
+        + [np.packbits(filled).tobytes(), state.weights[filled].tobytes()]
+    )
 
 
 def _state(model: Model, facts: dict[str, Any], data: bytes) -> FilterState:
@@ -170,6 +181,10 @@ def _state(model: Model, facts: dict[str, Any], data: bytes) -> FilterState:
     first, size = (take(pairs, "<i8") for _ in range(2))
     run_factor = take(slots, "<f8")
     oldest, newest, position = (take(slots, "<i8") for _ in range(3))
+    recent = tuple(
+        RecentRun(number, (Observation(*values),), take(pairs, "<f8"), take(pairs, "<f8"))
+        for number, *values in facts["recent"]
+    )
     grid = LevelGrid(spacing, first, size)
     cells = grid.rows * slots
     filled = np.unpackbits(take(-(-cells // 8), "u1"), count=cells).astype(bool)
@@ -185,5 +200,6 @@ def _state(model: Model, facts: dict[str, Any], data: bytes) -> FilterState:
         pair_total=pair_total,
         slots=RunSlots(oldest, newest, position),
         reference=np.zeros(1),
+        recent=recent,
         early=(),
     )

@@ -21,6 +21,7 @@ from detectors.grid_plan import (
 from detectors.level_grid import LevelGrid
 from detectors.observation import Observation
 from detectors.quantiles import upper_log_level
+from detectors.recent_runs import divided, fill, of_pairs
 from detectors.regrid import extended, respaced
 from detectors.spacing import LOWEST_LOG_LEVEL, reach
 
@@ -39,7 +40,7 @@ REFERENCE_SHARE = 0.99
 def followed(state: FilterState, counts: Sequence[Observation]) -> FilterState:
     """Prepare the grids for a count: drop, crop and respace now and then, reach out when the count asks.
 
-    Nodes that are added start empty: every run alive has seen counts that make those levels negligible.
+    Nodes that are added hold what the youngest runs would weigh there (see `recent_runs`).
     """
     if state.counted % UPKEEP_EVERY == 0:
         state = _respaced(_cropped(without_dropped(state)))
@@ -73,6 +74,7 @@ def without_dropped(state: FilterState) -> FilterState:
         log_weight=log_weight - smaller.over_pairs(log_total),
         weights=state.weights[bench.grid.rows_of_pairs(kept)],
         pair_total=state.pair_total[kept],
+        recent=of_pairs(state.recent, kept),
     )
 
 
@@ -88,7 +90,13 @@ def _cropped(state: FilterState) -> FilterState:
         weights *= scale.astype(np.float32)
     weights[weights < state.bench.model.accuracy.crop_below] = 0.0
     factor = np.where(stale, 1.0, state.run_factor)
-    return replace(state, weights=weights, run_factor=factor, pair_total=np.ones_like(state.pair_total))
+    return replace(
+        state,
+        weights=weights,
+        run_factor=factor,
+        pair_total=np.ones_like(state.pair_total),
+        recent=divided(state.recent, np.log(state.pair_total)),
+    )
 
 
 def _respaced(state: FilterState) -> FilterState:
@@ -176,10 +184,12 @@ def _moved(state: FilterState, new: LevelGrid, respace: NDArray[np.bool_]) -> Fi
         source = slice(int(old.start[pair]), int(old.start[pair] + old.size[pair]))
         target = slice(int(new.start[pair]), int(new.start[pair] + new.size[pair]))
         weights[target] = respaced(state.weights[source], old.log_level[source], new.log_level[target])
-    bench = state.bench
-    return replace(
-        state,
-        bench=bench_for(bench.model, bench.dispersion, bench.wander, bench.first_pair, new),
-        weights=weights,
-        pair_total=np.add.reduceat(weights, new.start, axis=0) @ state.run_factor,
+    bench = bench_for(
+        state.bench.model, state.bench.dispersion, state.bench.wander, state.bench.first_pair, new
     )
+    beyond = (new.log_level < new.spread(old.lowest) - 1e-9) | (
+        new.log_level > new.spread(old.highest) + 1e-9
+    )
+    fill(weights, np.flatnonzero(beyond), bench, state.recent, state.slots, state.run_factor)
+    # The divisor stays what it was: the weight that was filled in had been missing from the evidence.
+    return replace(state, bench=bench, weights=weights)

@@ -10,6 +10,7 @@ from detectors.level_grid import LevelGrid, grid_over
 from detectors.model import Model
 from detectors.observation import Observation
 from detectors.spacing import (
+    FEWEST_NODES,
     LOWEST_LOG_LEVEL,
     MOST_NODES,
     count_variance,
@@ -99,13 +100,14 @@ def count_span(
 def bounded_grid(spacing: FloatArray, lowest: FloatArray, highest: FloatArray) -> LevelGrid:
     """Grids over a range; where that takes too many nodes the spacing is widened instead."""
     least = (highest - lowest) / (MOST_NODES - 2)
-    return grid_over(np.where(spacing < least, on_ladder(np.sqrt(2.0) * least), spacing), lowest, highest)
+    bounded = np.where(spacing < least, on_ladder(np.sqrt(2.0) * least), spacing)
+    return grid_over(bounded, lowest, np.maximum(highest, lowest + FEWEST_NODES * bounded))
 
 
 def _span(log_level: FloatArray, dispersion: FloatArray, sds: float) -> tuple[FloatArray, FloatArray]:
     far = reach(log_level, dispersion, sds)
     lowest = np.maximum(log_level - far, LOWEST_LOG_LEVEL)
-    return lowest, np.maximum(log_level + far, lowest + 1.0)
+    return lowest, np.maximum(log_level + far, lowest + far / 2.0)
 
 
 def _fixed_grid(levels: IndependentLevels, pairs: int, factor: float) -> LevelGrid:

@@ -6,6 +6,7 @@ from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy import signal
 
 from detectors.jump_prior import IndependentLevels, JumpPrior
 from detectors.level_grid import LevelGrid
@@ -14,6 +15,7 @@ FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 Map = Callable[[NDArray[np.floating]], NDArray[np.floating]]
 
+LARGEST_MATRIX = 256
 FARTHEST_JUMP = 200.0
 """Jumps of the log level beyond this (a factor of e^200) are left out of the normalising sum."""
 
@@ -60,7 +62,7 @@ def _independent(jump: IndependentLevels, grid: LevelGrid) -> Map:
 @lru_cache(maxsize=256)
 def jump_weights(jump: JumpPrior, spacing: float, size: int) -> FloatArray:
     """Probability of a jump by 0, 1, ..., size - 1 nodes upwards (or downwards: it is symmetric)."""
-    offsets = np.arange(int(FARTHEST_JUMP / spacing) + 2, dtype=np.float64)
+    offsets = np.arange(max(int(FARTHEST_JUMP / spacing) + 2, size), dtype=np.float64)
     density = jump.density(offsets * spacing)
     weights: FloatArray = (density / (2.0 * density.sum() - density[0]))[:size]
     weights.flags.writeable = False
@@ -88,8 +90,19 @@ def _group(grid: LevelGrid, spacing: float) -> _Group:
 def _apply(jump: JumpPrior, groups: list[_Group], shifting: NDArray[np.floating]) -> NDArray[np.floating]:
     landed = np.zeros_like(shifting)
     for group in groups:
-        size = -(-group.longest // 32) * 32
-        matrix = _toeplitz(jump, group.spacing, size, shifting.dtype.str)[: group.longest, : group.longest]
         leaving = np.where(group.filled, shifting[group.rows], shifting.dtype.type(0))
-        landed[group.targets] = (leaving @ matrix)[group.filled]
+        landed[group.targets] = _jumped(jump, group, leaving)[group.filled]
     return landed
+
+
+def _jumped(jump: JumpPrior, group: _Group, leaving: NDArray[np.floating]) -> NDArray[np.floating]:
+    if group.longest > LARGEST_MATRIX:
+        weights = jump_weights(jump, group.spacing, group.longest)
+        both_ways = np.concatenate((weights[:0:-1], weights))[None, :]
+        moved = signal.fftconvolve(leaving.astype(np.float64), both_ways, axes=1)
+        # The transform's rounding can leave a trace below zero.
+        kept = moved[:, group.longest - 1 : 2 * group.longest - 1]
+        return np.maximum(kept, 0.0).astype(leaving.dtype)
+    size = -(-group.longest // 32) * 32
+    matrix = _toeplitz(jump, group.spacing, size, leaving.dtype.str)[: group.longest, : group.longest]
+    return leaving @ matrix

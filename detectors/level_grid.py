@@ -60,16 +60,6 @@ class LevelGrid:
         return self.node * self.spread(self.spacing)
 
     @cached_property
-    def ascending(self) -> IntArray:
-        """The rows of all pairs in order of their level."""
-        return np.argsort(self.log_level, kind="stable")
-
-    @cached_property
-    def ascending_log_level(self) -> FloatArray:
-        """The log levels of all rows, ascending."""
-        return self.log_level[self.ascending]
-
-    @cached_property
     def lowest(self) -> FloatArray:
         """Lowest log level of each pair."""
         return self.first * self.spacing

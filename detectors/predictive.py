@@ -41,9 +41,10 @@ def transform(bench: Bench, step: Step, observation: Observation) -> tuple[float
     """
     count = 0 if observation.count is None else observation.count
     likelihood = step.likelihood
-    predicted = step.row_mass / likelihood.probability
-    predicted = predicted / predicted.sum()
     mean = bench.level * observation.exposure
+    possible = likelihood.probability > 0.0
+    predicted = np.divide(step.row_mass, likelihood.probability, out=np.zeros_like(mean), where=possible)
+    predicted = predicted / predicted.sum()
     at = _along_grid(bench, observation, count, mean, likelihood.negative_binomial)
     below = np.maximum(at - likelihood.negative_binomial, 0.0)
     share = bench.model.one_off_share

@@ -9,6 +9,8 @@ from detectors.posterior import Quantiles
 FloatArray = NDArray[np.float64]
 
 SHARES = np.array([0.05, 0.5, 0.95])
+HALVINGS = 16
+NEGLIGIBLE = 1e-8
 
 
 def level_quantiles(grid: LevelGrid, row_mass: FloatArray) -> Quantiles:
@@ -24,13 +26,36 @@ def level_quantiles(grid: LevelGrid, row_mass: FloatArray) -> Quantiles:
     Returns
     -------
     Quantiles
-        In counts per unit of exposure. Between the nodes the distribution function is taken as straight.
+        In counts per unit of exposure.
+
+    Notes
+    -----
+    Each node's weight is spread evenly over its cell. That alone would widen a pair's distribution by the
+    variance of a cell, so its nodes are first drawn towards its mean until the variance is what it was.
     """
-    mass = row_mass[grid.ascending]
-    running = np.cumsum(mass)
-    middle = running - 0.5 * mass
-    low, mid, high = np.exp(np.interp(SHARES * running[-1], middle, grid.ascending_log_level)).tolist()
-    return Quantiles(low, mid, high)
+    centre, width = _cells(grid, row_mass)
+    heavy = row_mass > NEGLIGIBLE * row_mass.max()
+    mass, lower, width = row_mass[heavy], (centre - width / 2.0)[heavy], width[heavy]
+    wanted = SHARES * mass.sum()
+    low = np.full(SHARES.size, lower.min())
+    high = np.full(SHARES.size, (lower + width).max())
+    for _ in range(HALVINGS):
+        middle = (low + high) / 2.0
+        reached = np.clip((middle[:, None] - lower) / width, 0.0, 1.0) @ mass
+        below = reached < wanted
+        low, high = np.where(below, middle, low), np.where(below, high, middle)
+    return Quantiles(*np.exp((low + high) / 2.0).tolist())
+
+
+def _cells(grid: LevelGrid, row_mass: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Centre and width of each node's cell."""
+    total = np.maximum(np.add.reduceat(row_mass, grid.start), 1e-300)
+    mean = np.add.reduceat(row_mass * grid.log_level, grid.start) / total
+    distance = grid.log_level - grid.spread(mean)
+    variance = np.add.reduceat(row_mass * distance**2, grid.start) / total
+    cell = grid.spacing**2 / 12.0
+    drawn = np.sqrt(np.clip(1.0 - cell / np.maximum(variance, cell), 0.0, 1.0))
+    return grid.spread(mean) + distance * grid.spread(drawn), grid.spread(grid.spacing)
 
 
 def upper_log_level(log_level: FloatArray, row_mass: FloatArray, share: float) -> float:

@@ -19,6 +19,7 @@ from detectors.jump_prior import IndependentLevels
 from detectors.level_grid import LevelGrid
 from detectors.model import Model
 from detectors.observation import Observation
+from detectors.recent_runs import divided, remembered
 from detectors.run_slots import BLOCK, RunSlots, after_merge, first_slot, merges_due, with_new_run
 from detectors.spacing import LOG_LEVEL_RANGE
 
@@ -140,6 +141,7 @@ def _first(
         pair_total=np.ones(log_prior.size),
         slots=first_slot(counts[0].position),
         reference=_references(seen),
+        recent=(),
         early=(counts,),
     )
     return _weighed(state, likelihood)
@@ -168,9 +170,11 @@ def _update(state: FilterState, counts: tuple[Observation, ...]) -> tuple[Filter
     if slots.used.size > moved.shape[1]:
         moved = np.concatenate((moved, np.zeros((moved.shape[0], BLOCK), dtype=moved.dtype)), axis=1)
         factor = np.concatenate((factor, np.zeros(BLOCK)))
-    moved[:, slot] = bench.jump(walk.plain(weights.dtype) @ shifting) * row_factor
+    arriving = walk.plain(weights.dtype) @ shifting
+    moved[:, slot] = bench.jump(arriving) * row_factor
     factor[slot] = 1.0
     counted = state.counted + 1
+    recent = remembered(state.recent, bench, arriving.astype(np.float64), counts, counted)
     after = replace(
         state,
         counted=counted,
@@ -178,6 +182,7 @@ def _update(state: FilterState, counts: tuple[Observation, ...]) -> tuple[Filter
         weights=moved,
         run_factor=factor,
         slots=with_new_run(slots, slot, counted, position),
+        recent=divided(recent, np.log(state.pair_total) + bench.over_pairs(likelihood.log_scale)),
         early=_remembered(state, counts),
     )
     return _weighed(after, likelihood)
@@ -215,17 +220,21 @@ def _weighed(state: FilterState, likelihood: Likelihood) -> tuple[FilterState, S
         run_mass=np.add.reduceat(share[:, None] * by_slot, bench.first_pair, axis=0),
         slots=state.slots,
     )
-    return _merged(replace(state, log_weight=log_weight, pair_total=total)), step
+    return _merged(replace(state, log_weight=log_weight, pair_total=total), step.run_mass.mean(axis=0)), step
 
 
-def _merged(state: FilterState) -> FilterState:
+def _merged(state: FilterState, run_mass: FloatArray) -> FilterState:
+    """Merge old runs; of streams side by side the mean probability says which age stands for a group."""
     due = merges_due(state.slots, state.counted, state.bench.model.accuracy)
     if not due:
         return state
     weights, factor, slots = state.weights, state.run_factor.copy(), state.slots
+    mass = run_mass.copy()
     for kept, emptied in due:
         weights[:, kept] = weights[:, kept] * factor[kept] + weights[:, emptied] * factor[emptied]
         weights[:, emptied] = 0.0
         factor[kept], factor[emptied] = 1.0, 0.0
-        slots = after_merge(slots, kept, emptied)
+        both = mass[kept] + mass[emptied]
+        slots = after_merge(slots, kept, emptied, float(mass[kept] / both) if both > 0.0 else 0.5)
+        mass[kept] = both
     return replace(state, weights=weights, run_factor=factor, slots=slots)

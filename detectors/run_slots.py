@@ -88,14 +88,13 @@ def merges_due(slots: RunSlots, counted: int, accuracy: Accuracy) -> list[tuple[
     return due
 
 
-def after_merge(slots: RunSlots, kept: int, emptied: int) -> RunSlots:
+def after_merge(slots: RunSlots, kept: int, emptied: int, share_kept: float) -> RunSlots:
     """The slots after one group is merged into its older neighbour.
 
-    The position that stands for the group is the mean of both, each as heavy as the number of its runs.
+    The position that stands for the group is the mean of both, weighted by their probability.
     """
     oldest, newest, start = slots.oldest.copy(), slots.newest.copy(), slots.start_position.copy()
-    older, younger = int(newest[kept] - oldest[kept]) + 1, int(newest[emptied] - oldest[emptied]) + 1
     newest[kept] = newest[emptied]
-    start[kept] = (older * int(start[kept]) + younger * int(start[emptied])) // (older + younger)
+    start[kept] = round(share_kept * int(start[kept]) + (1.0 - share_kept) * int(start[emptied]))
     oldest[emptied] = newest[emptied] = start[emptied] = EMPTY
     return RunSlots(oldest, newest, start)

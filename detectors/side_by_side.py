@@ -9,6 +9,7 @@ from detectors.bench import bench_for
 from detectors.errors import UnusableParameter
 from detectors.filter_state import FilterState
 from detectors.level_grid import LevelGrid
+from detectors.recent_runs import joined_recent
 
 FloatArray = NDArray[np.float64]
 
@@ -59,6 +60,7 @@ def joined(states: Sequence[FilterState]) -> FilterState:
         pair_total=np.concatenate([state.pair_total for state in states]),
         slots=first.slots,
         reference=np.concatenate([state.reference for state in states]),
+        recent=joined_recent([state.recent for state in states]),
         early=(),
     )
 

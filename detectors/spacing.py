@@ -14,13 +14,15 @@ LOG_LEVEL_RANGE = 46.0
 
 STILL_PER_SD = 1.8
 WANDERING_PER_SD = 0.8
-MOST_NODES = 4096
+MOST_NODES = 1024
+FEWEST_NODES = 8
 WIDEST_REACH = 8.0
 
 
 def count_variance(log_level: float | FloatArray, dispersion: FloatArray) -> FloatArray:
-    """Variance of the log of one count: 1 / level + 1 / dispersion."""
-    return np.exp(-np.asarray(log_level, dtype=np.float64)) + 1.0 / dispersion
+    """Variance of the log of one count: 1 / level + 1 / dispersion, the level at least the lowest."""
+    level = np.maximum(np.asarray(log_level, dtype=np.float64), LOWEST_LOG_LEVEL)
+    return np.exp(-level) + 1.0 / dispersion
 
 
 def widest_spacing(variance: FloatArray, wander: FloatArray, longest_run: int | FloatArray) -> FloatArray:
@@ -60,3 +62,29 @@ def on_ladder(spacing: FloatArray) -> FloatArray:
 def reach(log_level: float | FloatArray, dispersion: FloatArray, sds: float) -> FloatArray:
     """Distance in the log level that `sds` standard deviations of one count's log span, bounded."""
     return np.minimum(sds * np.sqrt(count_variance(log_level, dispersion)), WIDEST_REACH)
+
+
+def resolvable_dispersion(
+    spacing: FloatArray, highest_log_level: FloatArray, dispersion: FloatArray
+) -> FloatArray:
+    """The dispersions, lowered where a grid is too coarse to show how narrow the likelihood is.
+
+    Parameters
+    ----------
+    spacing : ndarray, shape (pairs,)
+        Spacing of each pair's grid.
+    highest_log_level : ndarray, shape (pairs,)
+        Highest log level of each grid, where the likelihood is narrowest.
+    dispersion : ndarray, shape (pairs,)
+        The dispersions.
+
+    Returns
+    -------
+    ndarray, shape (pairs,)
+        On a grid as fine as `widest_spacing` asks, the dispersions unchanged. On a coarser one (a jump over
+        many powers of ten, a bound on the nodes) the count is taken as less informative than it is, rather
+        than falling between two nodes.
+    """
+    least = (spacing / STILL_PER_SD) ** 2 - np.exp(-highest_log_level)
+    inverse = 1.0 / dispersion
+    return np.where(least > inverse, 1.0 / np.maximum(least, 1e-300), dispersion)

@@ -19,7 +19,7 @@ from service.wiring import Wired, wire
 from service.work import Bench, catch_up, pass_for
 from storage.engine import Store, open_store
 from storage.migrate import upgrade
-from storage.rounds import BROKEN_OFF, FAILED, break_off_unfinished, list_rounds
+from storage.rounds import BROKEN_OFF, break_off_unfinished, list_rounds
 
 
 def run(settings: Path) -> None:
@@ -103,9 +103,9 @@ def _one_pass(
         with mine:
             if bench.stop.is_set():
                 return
-            outcome = pass_for(bench, plan)
+            passed = pass_for(bench, plan)
             deliverer.wake()
-        if outcome.outcome != FAILED and good_rounds is not None:
+        if passed.good and good_rounds is not None:
             report_good_round(good_rounds, plan.name, bench.clock.monotonic)
 
     return one_pass

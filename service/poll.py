@@ -38,7 +38,7 @@ def poll_once(settings: Path, sources: Sequence[str]) -> tuple[Round, ...]:
     with open_store(wired.database) as store:
         upgrade(store)
         bench = Bench(store, clock, wired.takers, stop)
-        done = [pass_for(bench, plan).round_id for plan in plans]
+        done = [pass_for(bench, plan).round.round_id for plan in plans]
         deliver_due(store, wired.outlets, clock, random.random)
         with store.reading() as conn:
             return tuple(get_round(conn, round_id) for round_id in done)

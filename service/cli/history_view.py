@@ -16,8 +16,8 @@ from service.cli.sparkline import sparkline
 from storage.posteriors import StoredPosterior, as_posterior
 from storage.streams import Stream
 
-COLUMNS = ("place", "at", "count", LEVEL_COLUMN, "shift", "run", "run began", "one-off")
-EVIDENCE_COLUMNS = ("written", "replaced")
+COLUMNS = ("at", "count", LEVEL_COLUMN, "shift", "run", "run began", "one-off")
+EVIDENCE_COLUMNS = ("place", *COLUMNS, "written", "replaced")
 LEGEND = (
     "level: as filtered from the counts so far; shift: probability of a recent shift not announced yet; "
     "run: most probable run length, in counts; one-off: probability that the count is one. The whole "
@@ -45,8 +45,8 @@ def show_evidence(stream: Stream, stored: Sequence[StoredPosterior], labels: Map
         return
     say(LEGEND)
     say("")
-    lines = [[*_cells(one, labels), one.written_utc, one.superseded_utc] for one in stored]
-    show_table((*COLUMNS, *EVIDENCE_COLUMNS), lines)
+    lines = [[one.place, *_cells(one, labels), one.written_utc, one.superseded_utc] for one in stored]
+    show_table(EVIDENCE_COLUMNS, lines)
 
 
 def history_json(stored: StoredPosterior) -> dict[str, object]:
@@ -74,7 +74,6 @@ def _say_head(stream: Stream) -> None:
 
 def _cells(stored: StoredPosterior, labels: Mapping[int, str]) -> list[Cell]:
     return [
-        stored.place,
         labels.get(stored.counted, stored.key),
         stored.count,
         quantiles_text(stored.level),

@@ -35,6 +35,14 @@ def show_table(columns: Sequence[str], rows: Sequence[Sequence[Cell]]) -> None:
             say(line)
 
 
+def show_telling(columns: Sequence[str], rows: Sequence[Sequence[Cell]], may_lack: frozenset[str]) -> None:
+    """A table without those of the named columns that are empty, or 0, on every line."""
+    there = [
+        place for place, name in enumerate(columns) if name not in may_lack or any(row[place] for row in rows)
+    ]
+    show_table([columns[place] for place in there], [[row[place] for place in there] for row in rows])
+
+
 def plain_lines(
     columns: Sequence[str], cells: Sequence[Sequence[str]], right: Sequence[bool]
 ) -> Iterator[str]:
@@ -127,17 +135,22 @@ def _show_rich(columns: Sequence[str], cells: Sequence[Sequence[str]], right: Se
     from rich.table import Table
     from rich.text import Text
 
-    needed = [max(map(len, column)) for column in zip(columns, *cells, strict=True)]
-    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0))
-    for name, to_right, length in zip(columns, right, needed, strict=True):
-        whole = length <= LONGEST_WHOLE
-        table.add_column(name, justify="right" if to_right else "left", no_wrap=whole, overflow="fold")
+    least = [_least_width(column) for column in zip(columns, *cells, strict=True)]
+    table = Table(box=None, pad_edge=False, padding=(0, GAP, 0, 0))
+    for name, to_right, length in zip(columns, right, least, strict=True):
+        table.add_column(name, justify="right" if to_right else "left", overflow="fold", min_width=length)
     for row in cells:
         # As Text, so that brackets in a title are not taken for markup.
         table.add_row(*map(Text, row))
-    # Figures are never folded or cut; on a terminal that is too narrow for them, lines run on.
-    least = sum(min(length, LONGEST_WHOLE) + GAP for length in needed)
-    Console(width=max(width(), least)).print(table)
+    # Figures, dates and ids are never broken; on a terminal that is too narrow for them, lines run on.
+    needed = sum(length + GAP for length in least)
+    Console(width=max(width(), needed)).print(table)
+
+
+def _least_width(column: Sequence[str]) -> int:
+    """That of its longest word, unless that is longer than any figure, date or id."""
+    words = (word for cell in column for word in cell.split() or [""])
+    return min(max(map(len, words)), LONGEST_WHOLE)
 
 
 def _is_long_prose(text: str) -> bool:

@@ -1,27 +1,30 @@
 """How each stream stands, from the tables and the settings."""
 
 import datetime
-from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 
 from sqlalchemy import Connection
 
 from config.settings import Settings
-from config.sources import Source
 from config.streams import stream_settings
 from service.standing import Bearings, Standing, standing
 from storage.posteriors import StoredPosterior, history, newest_posteriors
-from storage.rounds import Round, last_good_rounds
+from storage.rounds import last_good_rounds
 from storage.shifts import EMERGING, list_shifts
 from storage.streams import Stream
 
 
 @dataclass(frozen=True, slots=True)
 class StreamStanding:
-    """A stream with what was last said of it; `stands` is None if the settings no longer describe it."""
+    """A stream with what was last said of it, and when its source was last reached.
+
+    `stands` is None if the settings no longer describe the stream.
+    """
 
     stream: Stream
     newest: StoredPosterior | None
+    last_good_utc: datetime.datetime | None
     stands: Standing | None
 
 
@@ -30,43 +33,30 @@ def standings_of(
 ) -> tuple[StreamStanding, ...]:
     """How these streams stand now."""
     newest, rounds = newest_posteriors(conn), last_good_rounds(conn)
-    sources = {source.name: source for source in settings.sources}
-    return tuple(
-        StreamStanding(
-            stream,
-            newest.get(stream.id),
-            _stands(_bearings(conn, settings, sources, stream, newest.get(stream.id), rounds), now),
-        )
-        for stream in streams
+    reached = {source: one.started_utc for source, one in rounds.items()}
+    unsaid = (
+        StreamStanding(stream, newest.get(stream.id), reached.get(stream.source), None) for stream in streams
     )
+    return tuple(replace(one, stands=_stands(conn, settings, one, now)) for one in unsaid)
 
 
-def _stands(bearings: Bearings | None, now: datetime.datetime) -> Standing | None:
-    return None if bearings is None else standing(bearings, now)
-
-
-def _bearings(
-    conn: Connection,
-    settings: Settings,
-    sources: Mapping[str, Source],
-    stream: Stream,
-    newest: StoredPosterior | None,
-    rounds: Mapping[str, Round],
-) -> Bearings | None:
-    source = sources.get(stream.source)
-    described = None if source is None else stream_settings(settings, source, stream.split)
+def _stands(
+    conn: Connection, settings: Settings, one: StreamStanding, now: datetime.datetime
+) -> Standing | None:
+    source = next((source for source in settings.sources if source.name == one.stream.source), None)
+    described = None if source is None else stream_settings(settings, source, one.stream.split)
     if source is None or described is None:
         return None
-    good = rounds.get(stream.source)
-    window = described.judgement.window
-    return Bearings(
-        last_good_utc=None if good is None else good.started_utc,
+    judgement = described.judgement
+    bearings = Bearings(
+        last_good_utc=one.last_good_utc,
         every=source.every,
-        counted=0 if newest is None else newest.counted,
-        fewest_counts=described.judgement.fewest_counts,
-        window=window,
-        counts_since=_counts_since(conn, stream, window),
+        counted=0 if one.newest is None else one.newest.counted,
+        fewest_counts=judgement.fewest_counts,
+        window=judgement.window,
+        counts_since=_counts_since(conn, one.stream, judgement.window),
     )
+    return standing(bearings, now)
 
 
 def _counts_since(conn: Connection, stream: Stream, window: int) -> int | None:

@@ -1,11 +1,15 @@
 """Streams as people and machines read them."""
 
+import datetime
+import shlex
 from collections import Counter
 from collections.abc import Sequence
 
 from service.cli.figures import LEVEL_COLUMN, figures_json, probability_text, quantiles_text
-from service.cli.show import Cell, say, show_table
+from service.cli.show import Cell, say, show_telling
 from service.cli.standings import StreamStanding
+from service.standing import Standing
+from service.tell.dates import instant_words
 
 COLUMNS = (
     "stream",
@@ -15,27 +19,35 @@ COLUMNS = (
     "count",
     LEVEL_COLUMN,
     "shift",
-    "counts",
     "slate",
     "hushed until",
 )
-ONLY_IF_THERE = frozenset({"title", "hushed until"})
-LEGEND = (
-    "level: as filtered from the counts so far; shift: probability of a recent shift not announced yet; "
-    "counts: how many were folded."
-)
+MAY_LACK = frozenset({"title", "slate", "hushed until"})
+LEGEND = "level: as filtered from the counts so far; shift: probability of a recent shift not announced yet."
 NOT_DESCRIBED = "no longer in the settings"
 
 
 def show_streams(standings: Sequence[StreamStanding]) -> None:
-    """A table; columns that tell nothing are left out of it."""
-    lines = [_cells(one) for one in standings]
-    there = [place for place, name in enumerate(COLUMNS) if _tells(name, [line[place] for line in lines])]
-    show_table([COLUMNS[place] for place in there], [[line[place] for place in there] for line in lines])
-    if standings:
-        say("")
-        say(summary(standings))
-        say(LEGEND)
+    """A table, how many stand how, and which sources are overdue."""
+    slates = {one.stream.slate for one in standings}
+    lines = [_cells(one, None if len(slates) == 1 else one.stream.slate) for one in standings]
+    show_telling(COLUMNS, lines, MAY_LACK)
+    if not standings:
+        return
+    say("")
+    say(summary(standings))
+    for sentence in overdue(standings):
+        say(sentence)
+    say(LEGEND)
+
+
+def overdue(standings: Sequence[StreamStanding]) -> list[str]:
+    """Which sources are overdue, and what to look at."""
+    late = {one.stream.source: one.last_good_utc for one in standings if one.stands is Standing.LATE}
+    return [
+        f'Source "{source}" {_last_reached(reached)}: see knickpoint rounds --source {shlex.quote(source)}'
+        for source, reached in sorted(late.items())
+    ]
 
 
 def summary(standings: Sequence[StreamStanding]) -> str:
@@ -66,27 +78,23 @@ def stream_json(one: StreamStanding) -> dict[str, object]:
     }
 
 
-def _tells(column: str, cells: Sequence[Cell]) -> bool:
-    different = set(cells)
-    if column == "slate":
-        return len(different) > 1
-    return column not in ONLY_IF_THERE or different not in (set(), {None})
-
-
-def _cells(one: StreamStanding) -> list[Cell]:
+def _cells(one: StreamStanding, slate: str | None) -> list[Cell]:
     stream, newest = one.stream, one.newest
     title = None if stream.id == stream.title or stream.id.endswith(f"/{stream.title}") else stream.title
-    figures: list[Cell] = [None, None, None, None, 0]
+    figures: list[Cell] = [None, None, None, None]
     if newest is not None:
         figures = [
             newest.key if stream.shape == "calendar" else newest.at,
             newest.count,
             quantiles_text(newest.level),
             probability_text(newest.recent_shift),
-            newest.counted,
         ]
-    return [stream.id, title, _stands(one), *figures, stream.slate, stream.hushed_until_utc]
+    return [stream.id, title, _stands(one), *figures, slate, stream.hushed_until_utc]
 
 
 def _stands(one: StreamStanding) -> str:
     return NOT_DESCRIBED if one.stands is None else str(one.stands)
+
+
+def _last_reached(reached: datetime.datetime | None) -> str:
+    return "was never reached" if reached is None else f"was last reached at {instant_words(reached)}"

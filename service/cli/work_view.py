@@ -3,24 +3,24 @@
 import json
 from collections.abc import Sequence
 
+from service.cli.json_form import instant_text
 from service.cli.show import Cell
-from storage.outbox import Attempt, Delivery
+from storage.outbox import DELIVERED, WAITING, Attempt, Delivery
 from storage.rounds import Round
 
 ROUND_COLUMNS = (
     "round",
     "source",
     "started",
-    "seconds",
     "outcome",
-    "used",
     "stored",
     "unchanged",
     "absent",
     "kept out",
 )
-DELIVERY_COLUMNS = ("delivery", "outlet", "state", "attempts", "created", "due", "status", "last error")
+DELIVERY_COLUMNS = ("delivery", "outlet", "state", "attempts", "created")
 ATTEMPT_COLUMNS = ("at", "outcome", "status", "seconds", "error")
+ROUND_MAY_LACK = frozenset({"absent", "kept out"})
 KEPT_OUT_COLUMNS = ("row", "why", "text")
 
 
@@ -30,9 +30,7 @@ def round_cells(one: Round) -> list[Cell]:
         one.id,
         one.source,
         one.started_utc,
-        _seconds(one),
         one.outcome,
-        one.rows_used,
         one.stored,
         one.unchanged + one.held,
         one.absent,
@@ -61,9 +59,15 @@ def round_json(one: Round) -> dict[str, object]:
 
 def delivery_cells(one: Delivery) -> list[Cell]:
     """A line of `deliveries`."""
-    due = one.due_utc if one.state == "waiting" else None
-    state = one.state.replace("_", " ")
-    return [one.id, one.outlet, state, one.attempts, one.created_utc, due, one.last_status, one.last_error]
+    return [one.id, one.outlet, one.state.replace("_", " "), one.attempts, one.created_utc]
+
+
+def delivery_sentence(one: Delivery) -> str | None:
+    """What is to be known of a delivery that has not arrived."""
+    if one.state == DELIVERED:
+        return None
+    due = f"due at {instant_text(one.due_utc.replace(microsecond=0))}" if one.state == WAITING else "given up"
+    return f"{one.id} is {due}{'.' if one.last_error is None else ': ' + one.last_error}"
 
 
 def delivery_json(one: Delivery, attempts: Sequence[Attempt]) -> dict[str, object]:
@@ -94,10 +98,6 @@ def attempt_json(one: Attempt) -> dict[str, object]:
         "error": one.error,
         "took_seconds": one.took_seconds,
     }
-
-
-def _seconds(one: Round) -> float | None:
-    return None if one.ended_utc is None else (one.ended_utc - one.started_utc).total_seconds()
 
 
 def _body(body: bytes) -> object:

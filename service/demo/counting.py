@@ -19,7 +19,7 @@ def counting_service(clock: Clock, almanac: Almanac) -> Iterator[str]:
     """Serve the counts of all days that are over by the clock; gives the document's address."""
 
     class Counting(Handler):
-        def do_GET(self) -> None:
+        def do_GET(self) -> None:  # noqa: N802  The name is given by http.server.
             if self.path != PATH:
                 self.answer(HTTPStatus.NOT_FOUND)
                 return

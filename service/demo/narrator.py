@@ -1,4 +1,4 @@
-"""Tells what the daemon did, once each, in the order in which it happened. Knows the story; reads, never writes."""
+"""Tells what the daemon did, each thing once and in the order in which it happened. Knows the story; pure."""
 
 import datetime
 from collections.abc import Iterator
@@ -7,8 +7,8 @@ from dataclasses import dataclass, field
 from service.demo.place import stream_id
 from service.demo.seen import Seen
 from service.demo.story import FALL, FALLING_SHOW, HIT, HIT_SHOW, SHOWS, UNIT, Almanac
-from storage.rounds import FAILED, GOOD, NOTHING_NEW, Round
 from storage.posteriors import StoredPosterior
+from storage.rounds import FAILED, GOOD, NOTHING_NEW, Round
 from storage.shifts import Shift
 
 SUMMED_UP_AFTER = datetime.timedelta(days=6)
@@ -60,7 +60,7 @@ class Narrator:
                 continue
             if day == begun:
                 yield (
-                    f"From {day} on the invented service counts only {FALL.times:.0%} as much for "
+                    f"From {day} on the counting service has only {FALL.times:.0%} as many for "
                     f"{FALLING_SHOW.name}; the daemon is not told."
                 )
             yield (
@@ -91,8 +91,8 @@ def rounds_words(rounds: tuple[Round, ...]) -> str:
     failed = sum(one.outcome not in (GOOD, NOTHING_NEW) for one in rounds)
     trouble = f"; {failed} rounds failed" if failed else ""
     return (
-        f"Polled {len(rounds)} times since {rounds[0].started_utc.date()}: {new} new counts, and {unchanged} times "
-        f"the service said that nothing had changed{trouble}."
+        f"Polled {len(rounds)} times since {rounds[0].started_utc.date()}: {new} new counts; "
+        f"{unchanged} times the counting service said that nothing had changed{trouble}."
     )
 
 
@@ -122,8 +122,8 @@ def _history(found: tuple[Shift, ...]) -> str:
 
 def _announced(shift: Shift) -> str:
     return (
-        f"{TITLES.get(shift.stream_id)}: probability {shift.probability:.2f} lies above the threshold, and the shift "
-        "is announced. Its alert goes into the outbox."
+        f"{TITLES.get(shift.stream_id)}: {shift.probability:.2f} lies above the threshold, so the shift is "
+        "announced, and its alert waits in the outbox."
     )
 
 

@@ -7,7 +7,7 @@ from pathlib import Path
 
 from service.demo.story import HOUSE, UNIT
 
-SETTINGS = "knickpoint.toml"
+SETTINGS, LOG = "knickpoint.toml", "daemon.log"
 ADDRESS, SECRET = "desk-address.secret", "desk-signing.secret"
 SOURCE = "counts"
 EVERY_HOURS = 12
@@ -17,7 +17,6 @@ TEXT = f"""\
 
 [service]
 database = "knickpoint.sqlite"
-log_level = "warning"
 
 [[source]]
 name = "{SOURCE}"

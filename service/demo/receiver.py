@@ -40,7 +40,7 @@ def desk(clock: Clock, secret: str, arrivals: Arrivals) -> Iterator[str]:
     webhook = Webhook(secret)
 
     class Desk(Handler):
-        def do_POST(self) -> None:
+        def do_POST(self) -> None:  # noqa: N802  The name is given by http.server.
             length = int(self.headers.get("Content-Length") or 0)
             if self.path != PATH or not 0 < length <= LARGEST_ALERT:
                 self.answer(HTTPStatus.BAD_REQUEST)

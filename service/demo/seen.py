@@ -16,9 +16,10 @@ MOST_ROUNDS = 10_000
 
 @dataclass(frozen=True, slots=True)
 class Seen:
-    """`rounds` have ended, the oldest first; `hit` and `fall` are the days of the two shows since the first poll.
+    """The rounds that have ended and the shifts, the oldest first.
 
-    `folded` is the number of shows whose history is folded.
+    `folded` is the number of shows that have been folded; `hit` and `fall` are the days of these two shows
+    since the first poll.
     """
 
     rounds: tuple[Round, ...]

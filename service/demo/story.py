@@ -1,7 +1,9 @@
 """The invented house: its shows, and what each is made to count on each day. Pure.
 
 Pellowick House does not exist, nor do its shows, and no count here was measured. The counts are negative
-binomial draws; SEED names the draw that is shown.
+binomial draws, and SEED names the draw that is shown. It is an ordinary one: of the seeds 1 to 60, 59 ring
+for the fall after 2 to 9 of its counts, and for nothing else in the 65 days from the first poll on; the other
+one rings falsely for another show as well.
 """
 
 import datetime
@@ -11,7 +13,7 @@ from dataclasses import dataclass
 
 HOUSE = "Pellowick House"
 UNIT = "listens"
-SEED = 2
+SEED = 49
 HISTORY_DAYS = 120
 """So many days are over when the source is read for the first time."""
 

@@ -1,8 +1,8 @@
 """Folds a stream again from its first observation on, whatever was said of it before."""
 
 from service.clock import Clock
+from service.round.backlog import timing_of
 from service.round.fold import Brought, bring_up
-from service.round.once import timing_of
 from service.round.plans import RoundPlan, StreamPlan
 from storage.checkpoints import drop_checkpoints
 from storage.engine import Store

@@ -47,7 +47,11 @@ class Observed:
     waiting: int
 
 
-class OtherIntervals(ValueError):
+class UnusableReadings(ValueError):
+    """A stream's readings cannot be put into one series."""
+
+
+class OtherIntervals(UnusableReadings):
     """Stored counts cover other intervals than the settings now say, so they cannot stand in one series."""
 
     def __init__(self, stream_id: str, key: str, interval: str) -> None:
@@ -57,7 +61,7 @@ class OtherIntervals(ValueError):
         )
 
 
-class TooManyAbsent(ValueError):
+class TooManyAbsent(UnusableReadings):
     """The dates of a stream lie so far apart that filling what lies between would never end."""
 
     def __init__(self, stream_id: str, absent: int) -> None:

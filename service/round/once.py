@@ -1,20 +1,12 @@
-"""One round of one source: read its document, keep it, and bring its streams up to it."""
+"""One round of one source: read its document and keep what it says."""
 
 import datetime
-import threading
-from collections.abc import Iterable
-from dataclasses import dataclass
-from operator import itemgetter
-
-from sqlalchemy import Connection
+from dataclasses import dataclass, replace
 
 from service.clock import Clock
 from service.logs import log
-from service.round.fold import Brought, Timing, bring_up
 from service.round.keep import KeptDocument, keep, planned_streams
-from service.round.keys import began_utc
-from service.round.lateness import downtimes
-from service.round.plans import CalendarShape, RoundPlan
+from service.round.plans import RoundPlan
 from service.round.ripen import came_to_age
 from service.sources.document import Document, Validators
 from service.sources.errors import SourceUnreadable
@@ -22,12 +14,8 @@ from service.sources.open_source import Tools, read_document
 from service.sources.plans import fingerprint
 from storage.engine import Store
 from storage.errors import StoreError
-from storage.readings import newest_readings
-from storage.rounds import FAILED, GOOD, NOTHING_NEW, begin_round, end_round, list_rounds
-from storage.shifts import Shift
+from storage.rounds import FAILED, GOOD, NOTHING_NEW, begin_round, end_round
 from storage.validators import find_validators
-
-ROUNDS_LOOKED_AT = 50
 
 
 @dataclass(frozen=True, slots=True)
@@ -60,26 +48,12 @@ def read_and_keep(store: Store, plan: RoundPlan, clock: Clock) -> RoundOutcome:
     return outcome
 
 
-def bring_up_source(
-    store: Store, plan: RoundPlan, clock: Clock, stop: threading.Event
-) -> tuple[tuple[str, Brought], ...]:
-    """Fold the backlog of a source's streams, stopping between streams when asked to."""
-    timing = timing_of(store, plan, clock.now())
-    with store.reading() as conn:
-        streams = planned_streams(conn, plan)
-    brought: list[tuple[str, Brought]] = []
-    for stream in streams:
-        if stop.is_set():
-            log.info("folding stopped", source=plan.name, done=len(brought), left=len(streams) - len(brought))
-            break
-        try:
-            done = bring_up(store, stream, clock, timing)
-        except Exception:  # One stream that cannot be folded must not keep the others from being told.
-            log.exception("stream not folded", stream=stream.id)
-            continue
-        brought.append((stream.id, done))
-        _log_shifts(done.shifts)
-    return tuple(brought)
+def remark(store: Store, outcome: RoundOutcome, sentence: str, clock: Clock) -> RoundOutcome:
+    """Add a sentence to what the record of a round says."""
+    message = sentence if outcome.message is None else f"{outcome.message} {sentence}"
+    with store.writing() as conn:
+        end_round(conn, outcome.round_id, outcome.outcome, now=clock.now(), message=message)
+    return replace(outcome, message=message)
 
 
 def _read_and_keep(store: Store, plan: RoundPlan, clock: Clock, round_id: int) -> RoundOutcome:
@@ -105,32 +79,3 @@ def _left_out(kept: KeptDocument) -> str | None:
     if not kept.left_out:
         return None
     return f"Rows of streams that the settings leave out: {kept.left_out}."
-
-
-def timing_of(store: Store, plan: RoundPlan, now: datetime.datetime) -> Timing:
-    """How far the source's counts reach by now, and when it was not read though it should have been."""
-    with store.reading() as conn:
-        reaches = _reaches(conn, plan, now)
-        rounds = list_rounds(conn, source=plan.name, limit=ROUNDS_LOOKED_AT)
-    return Timing(reaches, downtimes(rounds, plan.every, now))
-
-
-def _reaches(
-    conn: Connection, plan: RoundPlan, now: datetime.datetime
-) -> datetime.date | datetime.datetime | None:
-    """The newest date of any calendar stream that has begun: a row put in ahead proves nothing."""
-    begun = (
-        (began_utc(stream.shape, one.at), one.at)
-        for stream in planned_streams(conn, plan)
-        if isinstance(stream.shape, CalendarShape) and stream.shape.absent == "zero"
-        for one in newest_readings(conn, stream.id)
-    )
-    newest = max((pair for pair in begun if pair[0] <= now), default=None, key=itemgetter(0))
-    return None if newest is None else newest[1]
-
-
-def _log_shifts(shifts: Iterable[Shift]) -> None:
-    for shift in shifts:
-        log.info(
-            "shift recorded", stream=shift.stream_id, shift=shift.id, origin=shift.origin, late=shift.late
-        )

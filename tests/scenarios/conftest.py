@@ -278,7 +278,7 @@ class World:
 
     def read(self) -> RoundOutcome:
         """Round, backlog, tell."""
-        return pass_for(self.bench(), self.plan())
+        return pass_for(self.bench(), self.plan()).round
 
     def poll(self) -> Round:
         """All of the path, at the present instant."""

@@ -32,7 +32,7 @@ def test_two_sources_and_one_is_broken(world, counts_of, loopback) -> None:
         world.studio.weekly("quay", counts[: number + 1])
         mail.studio.weekly("quay", counts[: number + 1])
         mail.studio.broken = (500, b"") if number == 44 else None
-        ended = [pass_for(bench, plan).outcome for plan in plans]
+        ended = [pass_for(bench, plan).round.outcome for plan in plans]
         assert ended == [GOOD, FAILED if number == 44 else GOOD]
         world.deliver()
     assert sorted(alert["stream"]["id"] for _, alert in world.desk.came) == ["letters/quay", "plays/quay"]
@@ -203,8 +203,11 @@ def test_a_day_stream_made_weekly_is_not_mixed(world, caplog) -> None:
     before = world.said()
     world.change(shape=type(world.settings)().shape)
     world.studio.rows = [{"show": "quay", "day": "2026-01-12", "plays": 21}]
-    world.poll()
+    done = world.poll()
     assert world.said() == before
+    assert done.outcome == GOOD
+    assert "'plays/quay' could not be folded" in (done.message or "")
+    assert "Put the former interval and zone back" in (done.message or "")
     assert any("not folded" in record.message for record in caplog.records)
 
 

@@ -2,8 +2,8 @@
 
 Each line on standard input is a walk in JSON: the database, the addresses of source and receiver, the
 instants to walk through, and at which commit to die, before or after it (0: never). Each walk is a forked
-child, so that the packages are loaded only once. The answer is a line: the child's exit status, or minus the
-signal.
+child, so that the packages are loaded only once. The answer is a line of JSON: the child's exit status, or
+minus the signal, and the files in which the commits that it came to were asked for.
 """
 
 import datetime
@@ -14,7 +14,9 @@ import signal
 import sys
 import threading
 import time
+import traceback
 from collections.abc import Callable
+from pathlib import Path
 from typing import Any
 from zoneinfo import ZoneInfo
 
@@ -54,18 +56,22 @@ class WalkClock:
 
 def main() -> None:
     for line in sys.stdin:
+        told, telling = os.pipe()
         child = os.fork()
         if child == 0:
-            walk(json.loads(line))
+            walk(json.loads(line), telling)
             os._exit(0)
+        os.close(telling)
+        with os.fdopen(told) as pipe:
+            stages = pipe.read().split()
         _, status = os.waitpid(child, 0)
-        print(os.waitstatus_to_exitcode(status), flush=True)
+        print(json.dumps({"status": os.waitstatus_to_exitcode(status), "stages": stages}), flush=True)
 
 
-def walk(given: dict[str, Any]) -> None:
+def walk(given: dict[str, Any], telling: int) -> None:
     clock = WalkClock()
     with open_store(given["database"], wait_seconds=5.0) as store:
-        die_at(store, given["commit"], given["side"])
+        die_at(store, given["commit"], given["side"], telling)
         clock.instant = datetime.datetime.fromisoformat(given["instants"][0])
         with store.writing() as conn:
             break_off_unfinished(conn, now=clock.now())
@@ -88,7 +94,7 @@ def stream_for(split: str | None) -> StreamPlan | None:
     return StreamPlan(f"plays/{split}", "plays", split, str(split), "house", WEEKS, MODEL, RULE, "one")
 
 
-def die_at(store: Store, commit: int, side: str) -> None:
+def die_at(store: Store, commit: int, side: str, telling: int) -> None:
     """Puts a counter around every commit of the writer."""
     dialect = store.engine.dialect
     real: Callable[[Any], None] = dialect.do_commit
@@ -98,6 +104,7 @@ def die_at(store: Store, commit: int, side: str) -> None:
         with lock:
             done[0] += 1
             mine = done[0] == commit
+            os.write(telling, f"{_stage()} ".encode())
         if mine and side == "before":
             os.kill(os.getpid(), signal.SIGKILL)
         real(connection)
@@ -105,6 +112,12 @@ def die_at(store: Store, commit: int, side: str) -> None:
             os.kill(os.getpid(), signal.SIGKILL)
 
     dialect.do_commit = counted  # type: ignore[method-assign]
+
+
+def _stage() -> str:
+    """The file of the service that asked for the commit under way."""
+    frames = traceback.extract_stack()
+    return next((Path(one.filename).stem for one in reversed(frames) if "service" in one.filename), "walker")
 
 
 if __name__ == "__main__":

@@ -22,15 +22,10 @@ def command(
 
     One that was given up can be sent again: knickpoint send-again DELIVERY.
     """
+    from service.cli.deliveries_view import show_deliveries, show_delivery
     from service.cli.opening import reading
-    from service.cli.show import show_json, show_table
-    from service.cli.work_view import (
-        ATTEMPT_COLUMNS,
-        DELIVERY_COLUMNS,
-        attempt_cells,
-        delivery_cells,
-        delivery_json,
-    )
+    from service.cli.show import show_json
+    from service.cli.work_view import delivery_json
     from storage.outbox import Delivery, get_delivery, list_attempts, list_deliveries
 
     with reading(given) as conn:
@@ -42,7 +37,7 @@ def command(
     if as_json:
         lines = [delivery_json(one, attempts[one.id]) for one in found]
         show_json(lines[0] if delivery else lines)
-        return
-    show_table(DELIVERY_COLUMNS, [delivery_cells(one) for one in found])
-    if delivery:
-        show_table(ATTEMPT_COLUMNS, [attempt_cells(one) for one in attempts[delivery]])
+    elif delivery is not None:
+        show_delivery(found[0], attempts[delivery])
+    else:
+        show_deliveries(found)

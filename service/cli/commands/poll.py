@@ -15,18 +15,20 @@ def command(ctx: click.Context, sources: tuple[str, ...], as_json: bool) -> None
 
     May be used beside a running daemon. Leaves with 4 if a source could not be read.
     """
-    from service.cli.rounds_view import show_rounds
+    from service.cli.rounds_view import show_polled
     from service.cli.show import show_json
     from service.cli.work_view import round_json
     from service.exit_codes import Exit
+    from service.logs import configure
     from service.poll import poll_once
     from storage.rounds import FAILED
 
     given: Given = ctx.obj
+    configure("words", "warning")
     rounds = poll_once(given.settings, sources)
     if as_json:
         show_json([round_json(one) for one in rounds])
     else:
-        show_rounds(rounds)
+        show_polled(rounds)
     if any(one.outcome == FAILED for one in rounds):
         ctx.exit(Exit.UNREADABLE)

@@ -17,7 +17,9 @@ def command(given: Given, streams: tuple[str, ...], as_json: bool) -> None:
     """
     from service.cli.rebuilding import REBUILT_COLUMNS, rebuild_with_progress, rebuilt_cells
     from service.cli.show import show_json, show_table
+    from service.logs import configure
 
+    configure("words", "warning")
     rebuilt = rebuild_with_progress(given, streams)
     if as_json:
         show_json(rebuilt)

@@ -72,9 +72,9 @@ def test_on_a_terminal_figures_are_never_broken_however_narrow_it_is(
     row = [f"{1000 + place} (900 to 1,234,567)" for place in range(8)]
     show_table([f"level {place}" for place in range(8)], [row])
     lines = capsys.readouterr().out.splitlines()
-    assert len(lines) == 2
-    assert all(cell in lines[1] for cell in row)
-    assert "\x1b[1mlevel 0" in lines[0]
+    assert all(len(line) <= 100 for line in lines[2:])
+    assert sorted(" ".join(lines[1:]).split()) == sorted(" ".join(row).split()), "a figure was broken"
+    assert "\x1b[1mlevel" in lines[0]
 
 
 def test_on_a_terminal_long_texts_are_folded_and_nothing_of_them_is_lost(
