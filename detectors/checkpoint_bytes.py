@@ -17,7 +17,7 @@ from detectors.level_grid import LevelGrid
 from detectors.model import MODEL_VERSION, Model
 from detectors.observation import Observation
 from detectors.posterior import Quantiles
-from detectors.recent_runs import RecentRun
+from detectors.recent_runs import RecentRuns
 from detectors.run_length import first_count, next_count
 from detectors.run_slots import RunSlots
 
@@ -141,7 +141,10 @@ def _state_facts(state: FilterState) -> dict[str, Any]:
         "pairs": int(state.log_weight.size),
         "slots": int(state.run_factor.size),
         "kind": state.weights.dtype.str,
-        "recent": [[run.number, *_written(run.counts[0])] for run in state.recent],
+        "recent": [
+            [number, *_written(one)]
+            for number, (one,) in zip(state.recent.numbers, state.recent.counts, strict=True)
+        ],
     }
 
 
@@ -160,7 +163,7 @@ def _state_arrays(state: FilterState) -> list[bytes]:
         state.slots.newest,
         state.slots.start_position,
     )
-    lately = [array.tobytes() for run in state.recent for array in (run.origin, run.log_scale)]
+    lately = [state.recent.origin.tobytes(), state.recent.log_scale.tobytes()]
     return (
         [a.tobytes() for a in parts]
         + lately
@@ -181,9 +184,13 @@ def _state(model: Model, facts: dict[str, Any], data: bytes) -> FilterState:
     first, size = (take(pairs, "<i8") for _ in range(2))
     run_factor = take(slots, "<f8")
     oldest, newest, position = (take(slots, "<i8") for _ in range(3))
-    recent = tuple(
-        RecentRun(number, (Observation(*values),), take(pairs, "<f8"), take(pairs, "<f8"))
-        for number, *values in facts["recent"]
+    lately = facts["recent"]
+    origin, log_scale = (take(len(lately) * pairs, "<f8").reshape(-1, pairs) for _ in range(2))
+    recent = RecentRuns(
+        tuple(number for number, *_ in lately),
+        tuple((Observation(*values),) for _, *values in lately),
+        origin,
+        log_scale,
     )
     grid = LevelGrid(spacing, first, size)
     cells = grid.rows * slots

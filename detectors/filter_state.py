@@ -11,7 +11,7 @@ from detectors.level_grid import LevelGrid
 from detectors.observation import Observation
 from detectors.posterior import Quantiles
 from detectors.quantiles import level_quantiles
-from detectors.recent_runs import Recent
+from detectors.recent_runs import RecentRuns
 from detectors.run_slots import RunSlots
 
 FloatArray = NDArray[np.float64]
@@ -41,7 +41,7 @@ class FilterState:
         The runs.
     reference : ndarray, shape (streams,)
         Log level for which the spacing was chosen while counts were few.
-    recent : tuple of RecentRun
+    recent : RecentRuns
         What the youngest runs would weigh at levels beyond the grids.
     early : tuple of tuple of Observation
         The counts so far, as long as there are few: for each position one a stream.
@@ -56,7 +56,7 @@ class FilterState:
     pair_total: FloatArray
     slots: RunSlots
     reference: FloatArray
-    recent: Recent
+    recent: RecentRuns
     early: tuple[tuple[Observation, ...], ...]
 
     @property

@@ -21,7 +21,7 @@ from detectors.grid_plan import (
 from detectors.level_grid import LevelGrid
 from detectors.observation import Observation
 from detectors.quantiles import upper_log_level
-from detectors.recent_runs import divided, fill, of_pairs
+from detectors.recent_runs import fill
 from detectors.regrid import extended, respaced
 from detectors.spacing import LOWEST_LOG_LEVEL, reach
 
@@ -74,7 +74,7 @@ def without_dropped(state: FilterState) -> FilterState:
         log_weight=log_weight - smaller.over_pairs(log_total),
         weights=state.weights[bench.grid.rows_of_pairs(kept)],
         pair_total=state.pair_total[kept],
-        recent=of_pairs(state.recent, kept),
+        recent=state.recent.of_pairs(kept),
     )
 
 
@@ -95,7 +95,7 @@ def _cropped(state: FilterState) -> FilterState:
         weights=weights,
         run_factor=factor,
         pair_total=np.ones_like(state.pair_total),
-        recent=divided(state.recent, np.log(state.pair_total)),
+        recent=state.recent.divided(np.log(state.pair_total)),
     )
 
 

@@ -9,8 +9,7 @@ from detectors.posterior import Quantiles
 FloatArray = NDArray[np.float64]
 
 SHARES = np.array([0.05, 0.5, 0.95])
-HALVINGS = 16
-NEGLIGIBLE = 1e-8
+NEGLIGIBLE = 1e-6
 
 
 def level_quantiles(grid: LevelGrid, row_mass: FloatArray) -> Quantiles:
@@ -33,18 +32,17 @@ def level_quantiles(grid: LevelGrid, row_mass: FloatArray) -> Quantiles:
     Each node's weight is spread evenly over its cell. That alone would widen a pair's distribution by the
     variance of a cell, so its nodes are first drawn towards its mean until the variance is what it was.
     """
-    centre, width = _cells(grid, row_mass)
     heavy = row_mass > NEGLIGIBLE * row_mass.max()
-    mass, lower, width = row_mass[heavy], (centre - width / 2.0)[heavy], width[heavy]
-    wanted = SHARES * mass.sum()
-    low = np.full(SHARES.size, lower.min())
-    high = np.full(SHARES.size, (lower + width).max())
-    for _ in range(HALVINGS):
-        middle = (low + high) / 2.0
-        reached = np.clip((middle[:, None] - lower) / width, 0.0, 1.0) @ mass
-        below = reached < wanted
-        low, high = np.where(below, middle, low), np.where(below, high, middle)
-    return Quantiles(*np.exp((low + high) / 2.0).tolist())
+    centre, width = _cells(grid, row_mass)
+    mass, centre, width = row_mass[heavy], centre[heavy], width[heavy]
+    edges = np.concatenate((centre - width / 2.0, centre + width / 2.0))
+    density = mass / width
+    order = np.argsort(edges, kind="stable")
+    edges = edges[order]
+    # The distribution function is straight between edges: its slope rises at lower, falls at upper edges.
+    slope = np.cumsum(np.concatenate((density, -density))[order])
+    reached = np.concatenate(([0.0], np.cumsum(slope[:-1] * np.diff(edges))))
+    return Quantiles(*np.exp(np.interp(SHARES * reached[-1], reached, edges)).tolist())
 
 
 def _cells(grid: LevelGrid, row_mass: FloatArray) -> tuple[FloatArray, FloatArray]:

@@ -1,13 +1,13 @@
 """What the youngest runs would weigh at levels that the grids did not span when those runs began.
 
-A run that has just begun may have a level far from its first counts: they were one-offs. Such levels carry too
-little weight to keep nodes for, until a later count makes them likely. Then the grids reach out, and the new
-nodes are filled with what the youngest runs would have there: the jump prior from the level that they left,
-times the probability of every count since. Older runs have seen too many counts to matter there.
+A run that has just begun may have a level far from its first counts: they were one-offs. Such levels carry
+too little weight to keep nodes for, until a later count makes them likely. Then the grids reach out, and the
+new nodes are filled with what the youngest runs would have there: the jump prior from the level that they
+left, times the probability of every count since. Older runs have seen too many counts to matter there.
 """
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,39 +24,49 @@ REMEMBERED = 8
 
 
 @dataclass(frozen=True)
-class RecentRun:
-    """A run that began lately.
+class RecentRuns:
+    """The runs that began last, oldest first.
 
     Attributes
     ----------
-    number : int
-        Number of its first count.
-    counts : tuple of Observation
+    numbers : tuple of int
+        Number of each run's first count.
+    counts : tuple of tuple of Observation
         That count, of each stream.
-    origin : ndarray, shape (pairs,)
+    origin : ndarray, shape (runs, pairs)
         Mean log level of the weight that shifted then.
-    log_scale : ndarray, shape (pairs,)
+    log_scale : ndarray, shape (runs, pairs)
         Log of that weight, less the logs of all divisors since.
     """
 
-    number: int
-    counts: tuple[Observation, ...]
+    numbers: tuple[int, ...]
+    counts: tuple[tuple[Observation, ...], ...]
     origin: FloatArray
     log_scale: FloatArray
 
+    def divided(self, log_divisor: FloatArray) -> "RecentRuns":
+        """After all weights were divided by a number a pair, shape (pairs,)."""
+        return RecentRuns(self.numbers, self.counts, self.origin, self.log_scale - log_divisor)
 
-Recent = tuple[RecentRun, ...]
+    def of_pairs(self, kept: IntArray) -> "RecentRuns":
+        """With some of the pairs only."""
+        return RecentRuns(self.numbers, self.counts, self.origin[:, kept], self.log_scale[:, kept])
+
+
+def none_recent(pairs: int) -> RecentRuns:
+    """No run began lately."""
+    return RecentRuns((), (), np.empty((0, pairs)), np.empty((0, pairs)))
 
 
 def remembered(
-    recent: Recent, bench: Bench, shifting: FloatArray, counts: tuple[Observation, ...], number: int
-) -> Recent:
+    recent: RecentRuns, bench: Bench, shifting: FloatArray, counts: tuple[Observation, ...], number: int
+) -> RecentRuns:
     """The youngest runs after one more has begun, before the divisors of its count are noted.
 
     Parameters
     ----------
-    recent : tuple of RecentRun
-        Those before, oldest first.
+    recent : RecentRuns
+        Those before.
     bench : Bench
         The grids.
     shifting : ndarray, shape (rows,)
@@ -68,31 +78,26 @@ def remembered(
 
     Returns
     -------
-    tuple of RecentRun
+    RecentRuns
     """
     if isinstance(bench.model.jump, IndependentLevels):
-        return ()
+        return recent
     grid = bench.grid
     total = np.maximum(np.add.reduceat(shifting, grid.start), 1e-300)
     origin = np.add.reduceat(shifting * grid.log_level, grid.start) / total
-    return (*recent, RecentRun(number, counts, origin, np.log(total)))[-REMEMBERED:]
-
-
-def divided(recent: Recent, log_divisor: FloatArray) -> Recent:
-    """The runs after all weights were divided by a number a pair, shape (pairs,)."""
-    return tuple(replace(run, log_scale=run.log_scale - log_divisor) for run in recent)
-
-
-def of_pairs(recent: Recent, kept: IntArray) -> Recent:
-    """The runs with some of the pairs only."""
-    return tuple(replace(run, origin=run.origin[kept], log_scale=run.log_scale[kept]) for run in recent)
+    return RecentRuns(
+        (*recent.numbers, number)[-REMEMBERED:],
+        (*recent.counts, counts)[-REMEMBERED:],
+        np.concatenate((recent.origin, origin[None, :]))[-REMEMBERED:],
+        np.concatenate((recent.log_scale, np.log(total)[None, :]))[-REMEMBERED:],
+    )
 
 
 def fill(
     weights: NDArray[np.floating],
     rows: IntArray,
     bench: Bench,
-    recent: Recent,
+    recent: RecentRuns,
     slots: RunSlots,
     run_factor: FloatArray,
 ) -> None:
@@ -106,8 +111,8 @@ def fill(
         Rows of the new nodes.
     bench : Bench
         The grids that hold them.
-    recent : tuple of RecentRun
-        The youngest runs, oldest first.
+    recent : RecentRuns
+        The youngest runs.
     slots : RunSlots
         Where each run stands.
     run_factor : ndarray, shape (slots,)
@@ -118,29 +123,30 @@ def fill(
     The wander since the run began is left out; the run is too young for it to matter at a distance.
     """
     jump = bench.model.jump
-    if isinstance(jump, IndependentLevels) or not recent or not rows.size:
+    if isinstance(jump, IndependentLevels) or not recent.numbers or not rows.size:
         return
     grid = bench.grid
     pair, level = grid.pair[rows], grid.log_level[rows]
     log_since = np.zeros(rows.size)
-    for run in reversed(recent):
-        log_since += bench.log_likelihood_at(rows, run.counts)
-        place = np.flatnonzero((slots.newest == run.number) & (slots.oldest == run.number))
+    for index in reversed(range(len(recent.numbers))):
+        number = recent.numbers[index]
+        log_since += bench.log_likelihood_at(rows, recent.counts[index])
+        place = np.flatnonzero((slots.newest == number) & (slots.oldest == number))
         if place.size != 1 or run_factor[place[0]] <= 0.0:
             continue
-        prior = jump.density(level - run.origin[pair]) * grid.spacing[pair]
-        filled = prior * np.exp(np.minimum(log_since + run.log_scale[pair], 600.0))
+        prior = jump.density(level - recent.origin[index, pair]) * grid.spacing[pair]
+        filled = prior * np.exp(np.minimum(log_since + recent.log_scale[index, pair], 600.0))
         weights[rows, place[0]] = filled / run_factor[place[0]]
 
 
-def joined_recent(parts: Sequence[Recent]) -> Recent:
+def joined_recent(parts: Sequence[RecentRuns]) -> RecentRuns:
     """The youngest runs of streams that are put side by side."""
-    return tuple(
-        RecentRun(
-            number=runs[0].number,
-            counts=tuple(count for run in runs for count in run.counts),
-            origin=np.concatenate([run.origin for run in runs]),
-            log_scale=np.concatenate([run.log_scale for run in runs]),
-        )
-        for runs in zip(*parts, strict=True)
+    return RecentRuns(
+        parts[0].numbers,
+        tuple(
+            tuple(one for count in counts for one in count)
+            for counts in zip(*(p.counts for p in parts), strict=True)
+        ),
+        np.concatenate([part.origin for part in parts], axis=1),
+        np.concatenate([part.log_scale for part in parts], axis=1),
     )

@@ -19,7 +19,7 @@ from detectors.jump_prior import IndependentLevels
 from detectors.level_grid import LevelGrid
 from detectors.model import Model
 from detectors.observation import Observation
-from detectors.recent_runs import divided, remembered
+from detectors.recent_runs import none_recent, remembered
 from detectors.run_slots import BLOCK, RunSlots, after_merge, first_slot, merges_due, with_new_run
 from detectors.spacing import LOG_LEVEL_RANGE
 
@@ -141,7 +141,7 @@ def _first(
         pair_total=np.ones(log_prior.size),
         slots=first_slot(counts[0].position),
         reference=_references(seen),
-        recent=(),
+        recent=none_recent(log_prior.size),
         early=(counts,),
     )
     return _weighed(state, likelihood)
@@ -182,7 +182,7 @@ def _update(state: FilterState, counts: tuple[Observation, ...]) -> tuple[Filter
         weights=moved,
         run_factor=factor,
         slots=with_new_run(slots, slot, counted, position),
-        recent=divided(recent, np.log(state.pair_total) + bench.over_pairs(likelihood.log_scale)),
+        recent=recent.divided(np.log(state.pair_total) + bench.over_pairs(likelihood.log_scale)),
         early=_remembered(state, counts),
     )
     return _weighed(after, likelihood)

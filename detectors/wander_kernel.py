@@ -28,8 +28,14 @@ def kernel(step: float) -> tuple[float, ...]:
     -------
     tuple of float
         Weight at the centre and at 1, 2, ... nodes either side; centre plus twice the rest is 1, and the
-        variance is step**2. Up to one spacing five points match the variance, and the fourth moment where
-        that leaves no weight negative; above it the Gaussian is sampled and normalised.
+        variance is step**2. Up to one spacing five points match variance and fourth moment, which takes
+        slightly negative outer weights below a step of 0.577; above it the Gaussian is sampled and normalised.
+
+    Notes
+    -----
+    Without the negative weights the kernel's tails would be too heavy: the alert probability of one stream
+    in sixteen was wrong by up to 0.04. On weights as smooth as a grid's spacing keeps them the result is not
+    negative.
 
     Examples
     --------
@@ -41,7 +47,7 @@ def kernel(step: float) -> tuple[float, ...]:
     if step == 0.0:
         return (1.0,)
     if step <= FIVE_POINT_LIMIT:
-        far = max((3.0 * u2 * u2 - u2) / 24.0, 0.0)
+        far = (3.0 * u2 * u2 - u2) / 24.0
         near = u2 / 2.0 - 4.0 * far
         return (1.0 - 2.0 * (near + far), near, far)
     half = math.ceil(5.5 * step)

@@ -2,27 +2,35 @@
 
 from collections.abc import Mapping, Sequence
 
-from service.cli.figures import probability_text, quantiles_json, quantiles_text
+from service.cli.figures import probability_text, quantiles_json
 from service.cli.show import Cell, say, show_table
+from service.tell.gather import Untold, story_of
+from service.tell.words import sentence
 from storage.shifts import HISTORY, Shift
+from storage.streams import Stream
 
-COLUMNS = ("stream", "since", "noticed at", "shift", "level before", "level after", "state", "told")
+COLUMNS = ("stream", "since", "noticed at", "shift", "state", "told")
 FOUND_IN_HISTORY = "found in history"
-CAUTION = (
-    "since: the most probable first count at the new level, which may lie somewhat off; shift: probability "
-    "of a recent shift when it was noticed; levels: as filtered by then, with their 5 % and 95 % quantiles. "
-    "A date in common is not a cause."
+MOST_SENTENCES = 10
+LEGEND = (
+    "since: the most probable first count at the new level; shift: probability of a recent shift when it was "
+    "noticed. A date in common is not a cause."
 )
 
 
-def show_shifts(shifts: Sequence[Shift]) -> None:
-    """A table, and how to read it."""
+def show_shifts(shifts: Sequence[Shift], streams: Mapping[str, Stream]) -> None:
+    """A table, and each shift in the words of its alert."""
     if not shifts:
         say("No shift has been announced.")
         return
     show_table(COLUMNS, [_cells(shift) for shift in shifts])
     say("")
-    say(CAUTION)
+    for shift in shifts[:MOST_SENTENCES]:
+        say(sentence(story_of(Untold(shift, streams[shift.stream_id]))))
+    if len(shifts) > MOST_SENTENCES:
+        say(f"... and {len(shifts) - MOST_SENTENCES} more, whose levels are in --json.")
+    say("")
+    say(LEGEND)
 
 
 def told_text(shift: Shift) -> str:
@@ -33,12 +41,12 @@ def told_text(shift: Shift) -> str:
     return f"{how}, late" if shift.late else how
 
 
-def shift_json(shift: Shift, titles: Mapping[str, str]) -> dict[str, object]:
+def shift_json(shift: Shift, streams: Mapping[str, Stream]) -> dict[str, object]:
     """A shift with all its figures; levels are filtered ones."""
     return {
         "id": shift.id,
         "stream": shift.stream_id,
-        "title": titles.get(shift.stream_id),
+        "title": streams[shift.stream_id].title,
         "origin": FOUND_IN_HISTORY if shift.origin == HISTORY else shift.origin,
         "state": shift.state,
         "start": {"key": shift.start_key, "at": shift.start_at, "position": shift.start_position},
@@ -65,8 +73,6 @@ def _cells(shift: Shift) -> list[Cell]:
         shift.start_key,
         shift.announced_key,
         probability_text(shift.probability),
-        quantiles_text(shift.level_before),
-        quantiles_text(shift.level_after),
         shift.state,
         told_text(shift),
     ]

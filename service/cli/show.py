@@ -135,16 +135,34 @@ def _show_rich(columns: Sequence[str], cells: Sequence[Sequence[str]], right: Se
     from rich.table import Table
     from rich.text import Text
 
-    least = [_least_width(column) for column in zip(columns, *cells, strict=True)]
+    columns_of_cells = list(zip(columns, *cells, strict=True))
+    full = [max(map(len, column)) for column in columns_of_cells]
+    widths = fitted(full, list(map(_least_width, columns_of_cells)), width() - GAP * len(columns))
     table = Table(box=None, pad_edge=False, padding=(0, GAP, 0, 0))
-    for name, to_right, length in zip(columns, right, least, strict=True):
-        table.add_column(name, justify="right" if to_right else "left", overflow="fold", min_width=length)
+    for name, to_right, length in zip(columns, right, widths, strict=True):
+        table.add_column(name, justify="right" if to_right else "left", overflow="fold", width=length)
     for row in cells:
         # As Text, so that brackets in a title are not taken for markup.
         table.add_row(*map(Text, row))
     # Figures, dates and ids are never broken; on a terminal that is too narrow for them, lines run on.
-    needed = sum(length + GAP for length in least)
-    Console(width=max(width(), needed)).print(table)
+    Console(width=max(width(), sum(widths) + GAP * len(widths))).print(table)
+
+
+def fitted(full: Sequence[int], least: Sequence[int], room: int) -> list[int]:
+    """Widths that fit into the room, where what can spare most gives way first.
+
+    Where not even the least ones fit, only what is long anyway gives way, and lines run on.
+    """
+    most = room if sum(least) <= room else LONGEST_WHOLE
+    widths = [max(min(length, most), shortest) for length, shortest in zip(full, least, strict=True)]
+    if sum(least) > room:
+        return widths
+    spare = [length - shortest for length, shortest in zip(widths, least, strict=True)]
+    for _ in range(min(sum(widths) - room, sum(spare))):
+        place = spare.index(max(spare))
+        spare[place] -= 1
+        widths[place] -= 1
+    return widths
 
 
 def _least_width(column: Sequence[str]) -> int:

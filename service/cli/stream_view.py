@@ -29,11 +29,12 @@ NOT_DESCRIBED = "no longer in the settings"
 
 def show_streams(standings: Sequence[StreamStanding]) -> None:
     """A table, how many stand how, and which sources are overdue."""
+    if not standings:
+        say("There is no such stream, or none yet: the first round makes them.")
+        return
     slates = {one.stream.slate for one in standings}
     lines = [_cells(one, None if len(slates) == 1 else one.stream.slate) for one in standings]
     show_telling(COLUMNS, lines, MAY_LACK)
-    if not standings:
-        return
     say("")
     say(summary(standings))
     for sentence in overdue(standings):

@@ -97,7 +97,10 @@ def _sum(ending: Ending) -> str:
 def _what_failed(ending: Ending, log: Path, seconds: float) -> str:
     errors = log.read_text(encoding="utf-8").count(" level=error ")
     advice = f"{log} has {errors} errors" if errors else "give it more time with --seconds"
-    return f"No alert about {FALLING_SHOW.name} arrived within {seconds:.0f} seconds: {ending.reached}; {advice}."
+    return (
+        f"No alert about {FALLING_SHOW.name} arrived within {seconds:.0f} seconds: {ending.reached}; "
+        f"{advice}."
+    )
 
 
 def _what_next(settings: Path) -> None:

@@ -60,11 +60,11 @@ class Narrator:
                 continue
             if day == begun:
                 yield (
-                    f"From {day} on the counting service has only {FALL.times:.0%} as many for "
+                    f"From {day} on the counting service has only {100 * FALL.times:.0f} % as many for "
                     f"{FALLING_SHOW.name}; the daemon is not told."
                 )
             yield (
-                f"{FALLING_SHOW.name}: {said.count} {UNIT} on {day}; "
+                f"{FALLING_SHOW.name}: {said.count:,} {UNIT} on {day}; "
                 f"probability of a recent shift {said.recent_shift:.2f}."
             )
 
@@ -98,7 +98,7 @@ def rounds_words(rounds: tuple[Round, ...]) -> str:
 
 def hit_words(day: datetime.date, said: StoredPosterior, rang: bool) -> str:
     """The runaway hit, and what the filter took it for."""
-    facts = f"{HIT_SHOW.name}: {said.count} {UNIT} on {day}, where about {said.level.mid:.0f} are usual"
+    facts = f"{HIT_SHOW.name}: {said.count:,} {UNIT} on {day}, where about {said.level.mid:,.0f} are usual"
     if rang or said.one_off < 0.5:
         return f"{facts}; a one-off with probability {said.one_off:.2f}."
     return (
@@ -110,14 +110,14 @@ def hit_words(day: datetime.date, said: StoredPosterior, rang: bool) -> str:
 def _first_poll(first: Round) -> str:
     if first.outcome == FAILED:
         return f"The first poll failed: {first.message}"
-    return f"First poll: {first.stored} counts of {len(SHOWS)} shows are read and kept."
+    return f"First poll: {first.stored:,} counts of {len(SHOWS)} shows are read and kept."
 
 
 def _history(found: tuple[Shift, ...]) -> str:
     if not found:
         return "History folded: no shift found in it."
     listed = "; ".join(f"{TITLES.get(one.stream_id)} {_moved(one)} about {one.start_key}" for one in found)
-    return f"History folded. Shifts found in it are recorded, and nobody is told: {listed}."
+    return f"History folded. Shifts found in it are recorded, and nobody is told: {listed} (levels as filtered then)."
 
 
 def _announced(shift: Shift) -> str:
@@ -129,4 +129,4 @@ def _announced(shift: Shift) -> str:
 
 def _moved(shift: Shift) -> str:
     before, after = shift.level_before.mid, shift.level_after.mid
-    return f"{'rose' if after > before else 'fell'} from {before:.0f} to {after:.0f}"
+    return f"{'rose' if after > before else 'fell'} from about {before:,.0f} to {after:,.0f}"

@@ -2,18 +2,34 @@
 
 import json
 import secrets
-from dataclasses import dataclass
+from dataclasses import asdict, dataclass
 from datetime import UTC, datetime
+from typing import Annotated, Literal
+
+from pydantic import Field
 
 from service.outlets.outlet import Kind, Outcome, Outlet
 
-TRIAL_TYPE = "trial"
 SENTENCE = (
     "This is a trial: nothing has moved, and nothing needs doing. An alert reads like this, here with an "
     "invented show and invented figures: Example Show: the filtered level fell by about 40 %, from about "
     "1,050 to about 640 counts per week, most probably from 2026-03-02 (90 %: between 2026-02-23 and "
     "2026-03-09); probability of a recent shift 0.96."
 )
+CAUTION = "The show and its figures are invented; decide nothing by them."
+
+
+@dataclass(frozen=True, slots=True)
+class Trial:
+    """One message that says it is a trial. What it shares with an alert has the same names."""
+
+    type: Literal["trial"]
+    schema: Literal[1]
+    id: Annotated[str, Field(description="Also in the header webhook-id.")]
+    composed: Annotated[str, Field(description="An instant in UTC, as RFC 3339 writes it, ending in Z.")]
+    sentence: str
+    caution: str
+    outlet: Annotated[str, Field(description="The outlet's name in the settings.")]
 
 
 @dataclass(frozen=True, slots=True)
@@ -34,16 +50,10 @@ def try_outlet(outlet: Outlet, now: datetime) -> Tried:
 
 
 def trial_body(outlet: str, delivery_id: str, now: datetime) -> bytes:
-    """The bytes of a trial; what it shares with an alert has the same names."""
-    document = {
-        "type": TRIAL_TYPE,
-        "schema": 1,
-        "id": delivery_id,
-        "composed": now.astimezone(UTC).isoformat(timespec="seconds").replace("+00:00", "Z"),
-        "outlet": outlet,
-        "sentence": SENTENCE,
-    }
-    return json.dumps(document, sort_keys=True, ensure_ascii=False).encode("utf-8", "replace")
+    """The bytes of a trial."""
+    composed = now.astimezone(UTC).isoformat(timespec="seconds").replace("+00:00", "Z")
+    trial = Trial("trial", 1, delivery_id, composed, SENTENCE, CAUTION, outlet)
+    return json.dumps(asdict(trial), sort_keys=True, ensure_ascii=False).encode("utf-8", "replace")
 
 
 def _sentence(name: str, outcome: Outcome) -> str:

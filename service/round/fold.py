@@ -9,6 +9,7 @@ from detectors.advance import Checkpoint, start
 from detectors.errors import UnreadableCheckpoint
 from service.clock import Clock
 from service.round.advance import fold, resume
+from service.round.kinds import require_same_kind
 from service.round.lateness import Downtime
 from service.round.observe import Observed, Stored, observe
 from service.round.plans import ReleaseShape, StreamPlan
@@ -94,6 +95,7 @@ def _look(conn: Connection, plan: StreamPlan, now: datetime.datetime, timing: Ti
     stream = find_stream(conn, plan.id)
     if stream is None:
         return None
+    require_same_kind(conn, plan)
     ripe = ripe_readings(conn, plan.id) if isinstance(plan.shape, ReleaseShape) else ()
     stored = Stored(newest_readings(conn, plan.id), ripe)
     observed = observe(plan, stored, now, source_reaches=timing.source_reaches)

@@ -7,7 +7,8 @@ from dataclasses import dataclass
 from sqlalchemy import Connection
 
 from service.round.keys import sort_rows
-from service.round.plans import CalendarShape, RoundPlan, StreamPlan
+from service.round.kinds import require_same_kind
+from service.round.plans import CalendarShape, RoundPlan, StreamPlan, shape_word
 from service.round.ripen import keep_releases
 from service.sources.document import Document, KeptOut
 from storage.readings import Kept, NewReading, keep_readings
@@ -32,8 +33,16 @@ class KeptDocument:
 def keep(
     conn: Connection, plan: RoundPlan, document: Document, *, round_id: int, now: datetime.datetime
 ) -> KeptDocument:
-    """Store a document's rows as readings, with the streams they belong to and what was kept out."""
+    """Store a document's rows as readings, with the streams they belong to and what was kept out.
+
+    Raises
+    ------
+    service.round.observe.UnusableReadings
+        If a stream's counts were of another kind so far; the transaction must be taken back.
+    """
     sorted_rows = sort_rows(document.rows, plan, now)
+    for stream in (*planned_streams(conn, plan), *(stream for stream, _ in sorted_rows.by_stream)):
+        require_same_kind(conn, stream)
     new = see_streams(conn, [_seen(stream) for stream, _ in sorted_rows.by_stream], now=now)
     named = {stream.id for stream, _ in sorted_rows.by_stream}
     # Of a stream that the document does not name, all that is known is absent now.
@@ -79,7 +88,7 @@ def _counts(kept: Sequence[Kept], used: int, kept_out: Iterable[KeptOut]) -> Rou
 
 
 def _seen(stream: StreamPlan) -> SeenStream:
-    shape = "calendar" if isinstance(stream.shape, CalendarShape) else "release"
+    shape = shape_word(stream.shape)
     return SeenStream(stream.id, stream.source, stream.split, stream.title, stream.slate, shape)
 
 

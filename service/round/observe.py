@@ -102,6 +102,23 @@ def observe(
     return _releases(plan.shape, stored, now)
 
 
+def place_readings(stream_id: str, shape: CalendarShape, readings: Sequence[Reading]) -> dict[int, Reading]:
+    """The readings of a calendar stream by the position of their interval.
+
+    Raises
+    ------
+    OtherIntervals
+        If one was stored for another interval or zone.
+    """
+    by_position = {}
+    for reading in readings:
+        position = position_of(shape.axis, reading.at)
+        if reading.key != key_of(shape.axis, position):
+            raise OtherIntervals(stream_id, reading.key, str(shape.axis.interval))
+        by_position[position] = reading
+    return by_position
+
+
 def _calendar(
     plan: StreamPlan,
     shape: CalendarShape,
@@ -109,7 +126,7 @@ def _calendar(
     now: datetime.datetime,
     reaches: At | None,
 ) -> Observed:
-    by_position = _by_position(plan.id, shape, readings)
+    by_position = place_readings(plan.id, shape, readings)
     over = last_over(shape.axis, now - shape.settling)
     # What was put in ahead waits, and says nothing of the intervals before it.
     begun = [position for position in by_position if position <= position_of(shape.axis, now)]
@@ -125,16 +142,6 @@ def _calendar(
         [_calendar_place(shape, position, by_position.get(position)) for position in positions],
         sum(position > over for position in by_position),
     )
-
-
-def _by_position(stream_id: str, shape: CalendarShape, readings: Sequence[Reading]) -> dict[int, Reading]:
-    by_position = {}
-    for reading in readings:
-        position = position_of(shape.axis, reading.at)
-        if reading.key != key_of(shape.axis, position):
-            raise OtherIntervals(stream_id, reading.key, str(shape.axis.interval))
-        by_position[position] = reading
-    return by_position
 
 
 def _last_known(shape: CalendarShape, known: Iterable[int], reaches: At | None) -> int:

@@ -6,6 +6,7 @@ from dataclasses import dataclass, replace
 from service.clock import Clock
 from service.logs import log
 from service.round.keep import KeptDocument, keep, planned_streams
+from service.round.observe import UnusableReadings
 from service.round.plans import RoundPlan
 from service.round.ripen import came_to_age
 from service.sources.document import Document, Validators
@@ -33,7 +34,7 @@ def read_and_keep(store: Store, plan: RoundPlan, clock: Clock) -> RoundOutcome:
         round_id = begin_round(conn, plan.name, now=clock.now())
     try:
         outcome = _read_and_keep(store, plan, clock, round_id)
-    except (SourceUnreadable, StoreError) as error:
+    except (SourceUnreadable, UnusableReadings, StoreError) as error:
         outcome = RoundOutcome(round_id, FAILED, str(error))
     except Exception as error:  # A round must not end the daemon; the record says what happened.
         log.exception("round failed", source=plan.name, round=round_id)

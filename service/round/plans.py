@@ -50,6 +50,11 @@ class StreamPlan:
     fingerprint: str
 
 
+def shape_word(shape: Shape) -> Literal["calendar", "release"]:
+    """The shape as it is stored."""
+    return "calendar" if isinstance(shape, CalendarShape) else "release"
+
+
 @dataclass(frozen=True, slots=True)
 class RoundPlan:
     """One source: where it is read, how often, and which stream a split value means (None: left out).

@@ -21,7 +21,7 @@ def grown_to(counted: int, accuracy: Accuracy) -> tuple[RunSlots, int]:
         most = max(most, int(slots.used.sum()))
         for kept, emptied in merges_due(slots, number, accuracy):
             assert slots.oldest[emptied] == slots.newest[kept] + 1
-            slots = after_merge(slots, kept, emptied)
+            slots = after_merge(slots, kept, emptied, 0.5)
     return slots, most
 
 

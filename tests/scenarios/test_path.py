@@ -285,16 +285,6 @@ def test_an_unchanged_document_is_not_read_twice(world, counts_of) -> None:
     assert world.studio.asked == [200, 304]
 
 
-def test_a_week_that_is_still_open_waits(world, counts_of) -> None:
-    world.studio.weekly("quay", counts_of(3, (1000, 15)))
-    world.at_week(13, hours=30)
-    world.poll()
-    assert len(world.history()) == 14
-    world.at_week(14, hours=0)
-    world.poll()
-    assert len(world.history()) == 15
-
-
 def _readings(world):
     with world.store.reading() as conn:
         return newest_readings(conn, "plays/quay")

@@ -1,4 +1,4 @@
-"""Sources side by side, rounds side by side, and releases that ripen."""
+"""Sources side by side, rounds side by side, counts that wait, and releases that ripen."""
 
 import datetime
 import threading
@@ -107,6 +107,16 @@ def test_two_with_different_settings_never_mix(world, counts_of, open_fresh) -> 
     assert [row.count for row in world.said()] == counts
 
 
+def test_a_week_that_is_still_open_waits(world, counts_of) -> None:
+    world.studio.weekly("quay", counts_of(3, (1000, 15)))
+    world.at_week(13, hours=30)
+    world.poll()
+    assert len(world.history()) == 14
+    world.at_week(14, hours=0)
+    world.poll()
+    assert len(world.history()) == 15
+
+
 def test_daily_counts_that_leave_quiet_days_out(world) -> None:
     """A table that leaves out days without plays: they are zeros as far as the source has come."""
     world.change(shape=_days("zero"), every=DAY)
@@ -192,7 +202,7 @@ def test_a_new_show_with_a_past_is_history(world, counts_of) -> None:
         assert [one.id for one in list_streams(conn)] == ["plays/mill", "plays/quay"]
 
 
-def test_a_day_stream_made_weekly_is_not_mixed(world, caplog) -> None:
+def test_a_stream_that_changes_its_kind_is_left_as_it_was(world, caplog) -> None:
     world.change(shape=_days("missing"), every=DAY)
     start = datetime.date(2026, 1, 1)
     world.studio.rows = [
@@ -201,14 +211,23 @@ def test_a_day_stream_made_weekly_is_not_mixed(world, caplog) -> None:
     world.clock.instant = datetime.datetime(2026, 1, 28, 6, tzinfo=UTC)
     world.poll()
     before = world.said()
-    world.change(shape=type(world.settings)().shape)
     world.studio.rows = [{"show": "quay", "day": "2026-01-12", "plays": 21}]
-    done = world.poll()
-    assert world.said() == before
-    assert done.outcome == GOOD
-    assert "'plays/quay' could not be folded" in (done.message or "")
-    assert "Put the former interval and zone back" in (done.message or "")
+    weeks = type(world.settings)().shape
+    for shape, word in ((weeks, "'2026-01-01', which is no week"), (_releases(7), "now say 'release'")):
+        world.change(shape=shape)
+        done = world.poll()
+        assert (done.outcome, world.said()) == (FAILED, before)
+        assert word in (done.message or "")
+        assert "Put the former" in (done.message or "")
+        assert "'plays/quay' could not be folded" in (done.message or "")
+        with world.store.reading() as conn:
+            assert [one.count for one in all_readings(conn, "plays/quay")] == [3] * 20
     assert any("not folded" in record.message for record in caplog.records)
+    # Put back, it goes on.
+    world.change(shape=_days("missing"))
+    world.clock.instant += DAY
+    assert world.poll().outcome == GOOD
+    assert [row.count for row in world.said()][11] == 21
 
 
 _EPISODES = FieldPlan("$.day", "$.plays", split="$.show", release="$.id", title="$.name")

@@ -27,8 +27,8 @@ def command(given: Given, stream: str | None, origin: str | None, limit: int, as
     with reading(given) as conn:
         wanted = None if stream is None else require_stream(conn, stream).id
         shifts = list_shifts(conn, stream_id=wanted, origin=origin, limit=limit)
-        titles = {each.id: each.title for each in list_streams(conn)}
+        streams = {each.id: each for each in list_streams(conn)}
     if as_json:
-        show_json([shift_json(shift, titles) for shift in shifts])
+        show_json([shift_json(shift, streams) for shift in shifts])
     else:
-        show_shifts(shifts)
+        show_shifts(shifts, streams)

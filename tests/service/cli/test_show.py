@@ -5,7 +5,16 @@ import sys
 
 import pytest
 
-from service.cli.show import cell_text, number_text, plain_lines, say, show_table
+from service.cli.show import (
+    LONGEST_WHOLE,
+    cell_text,
+    fitted,
+    number_text,
+    plain_lines,
+    say,
+    show_table,
+    show_telling,
+)
 
 
 @pytest.mark.parametrize(
@@ -55,6 +64,25 @@ def test_a_table_that_is_piped_is_plain_and_whole(capsys: pytest.CaptureFixture[
 def test_an_empty_table_still_has_its_headings(capsys: pytest.CaptureFixture[str]) -> None:
     show_table(("title", "count"), [])
     assert capsys.readouterr().out == "title  count\n"
+
+
+def test_a_column_that_tells_nothing_can_be_left_out(capsys: pytest.CaptureFixture[str]) -> None:
+    show_telling(("a", "b", "c"), [[1, None, 0], [None, None, 0]], frozenset({"a", "b"}))
+    assert capsys.readouterr().out == "a  c\n1  0\n-  0\n"
+
+
+@pytest.mark.parametrize(
+    ("room", "widths"),
+    [
+        (60, [10, 20, 30]),
+        (50, [10, 18, 22]),
+        (30, [10, 8, 12]),
+        (24, [10, 5, 9]),
+        (23, [10, 20, LONGEST_WHOLE]),
+    ],
+)
+def test_what_can_spare_most_gives_way_first(room: int, widths: list[int]) -> None:
+    assert fitted([10, 20, 30], [10, 5, 9], room) == widths
 
 
 def _pretend_terminal(monkeypatch: pytest.MonkeyPatch) -> None:

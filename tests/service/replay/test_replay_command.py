@@ -1,6 +1,8 @@
 """`knickpoint replay`: the whole way from a file to the answer."""
 
 import datetime
+import io
+import json
 from collections.abc import Callable
 from typing import Any
 
@@ -9,7 +11,9 @@ import pytest
 from detectors.advance import advance, start
 from detectors.judge import Rule
 from detectors.observation import Observation
+from service.cli.main import run_command
 from service.replay.parameters import Wish, model_for
+from service.sources.plans import Bounds
 
 Replay = Callable[..., dict[str, Any]]
 Refused = Callable[..., tuple[int, str]]
@@ -191,3 +195,38 @@ def test_what_cannot_be_replayed_is_said_in_one_sentence(
 
 def test_one_row_can_be_replayed_when_its_interval_is_named(replayed: Replay) -> None:
     assert len(replayed(["at,count", "2026-01-05,5"], "--interval", "week")["observations"]) == 1
+
+
+class _Given:
+    """Stands for sys: something that comes on standard input."""
+
+    def __init__(self, body: bytes) -> None:
+        self.stdin = io.TextIOWrapper(io.BytesIO(body))
+
+
+def _replay_given(
+    body: bytes, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> tuple[int, str, str]:
+    monkeypatch.setattr("service.replay.given.sys", _Given(body))
+    code = run_command(["replay", "-", "--json", "--wander", "0", "--dispersion", "4,16"])
+    shown = capsys.readouterr()
+    return code, shown.out, shown.err
+
+
+def test_standard_input_is_answered_as_the_same_file_is(
+    replayed: Replay, capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    lines = _weekly(HIGH + LOW)
+    code, out, _ = _replay_given("\n".join(lines).encode(), capsys, monkeypatch)
+    assert (code, json.loads(out)) == (0, replayed(lines))
+
+
+def test_what_is_wrong_with_standard_input_is_said(
+    capsys: pytest.CaptureFixture[str], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    code, out, err = _replay_given(b"at,count\n", capsys, monkeypatch)
+    assert (code, out) == (4, "")
+    assert err.startswith("knickpoint: standard input cannot be replayed: it has no rows")
+    monkeypatch.setattr("service.replay.given.Bounds", lambda: Bounds(largest_body=5))
+    code, _, err = _replay_given(b"at,count\n", capsys, monkeypatch)
+    assert (code, "more than the 5 bytes" in err) == (4, True)

@@ -11,6 +11,7 @@ from pydantic import TypeAdapter, ValidationError
 
 import service.tell
 from detectors.posterior import Quantiles
+from service.outlets.trial import Trial, trial_body
 from service.tell.alert_body import Alert, alert_body
 from service.tell.alert_schema import SCHEMA_FILE, schema_text
 from service.tell.story import ShiftStory
@@ -102,11 +103,21 @@ def test_the_published_schema_is_that_of_the_classes() -> None:
 
 
 def test_every_field_of_an_alert_is_in_the_published_schema(story: ShiftStory) -> None:
-    schema = json.loads(schema_text())
+    parts = json.loads(schema_text())["$defs"]
     alert = json.loads(body(story))
-    assert set(schema["properties"]) == set(schema["required"]) == set(alert)
+    assert set(parts["Alert"]["properties"]) == set(parts["Alert"]["required"]) == set(alert)
     for name, part in (("FiguresPart", alert["figures"]), ("StreamPart", alert["stream"])):
-        assert set(schema["$defs"][name]["properties"]) == set(part)
+        assert set(parts[name]["properties"]) == set(part)
+
+
+def test_a_trial_has_the_names_of_an_alert_and_is_in_the_schema_too(story: ShiftStory) -> None:
+    schema = json.loads(schema_text())
+    assert schema["anyOf"] == [{"$ref": "#/$defs/Alert"}, {"$ref": "#/$defs/Trial"}]
+    trial = json.loads(trial_body("desk", "trial_1", COMPOSED))
+    assert set(schema["$defs"]["Trial"]["required"]) == set(trial)
+    assert set(trial) - {"outlet"} <= set(json.loads(body(story)))
+    assert TypeAdapter[Alert | Trial](Alert | Trial).validate_python(trial) == Trial(**trial)
+    assert (trial["composed"], trial["schema"]) == ("2026-03-23T06:00:05Z", 1)
 
 
 def test_the_classes_refuse_another_form(story: ShiftStory) -> None:
