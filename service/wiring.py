@@ -178,7 +178,16 @@ def _round(settings: Settings, source: written.Source) -> RoundPlan:
             known[split] = None if stream is None else stream_plan(stream)
         return known[split]
 
-    return RoundPlan(source.name, _source(settings, source), source.every, stream_for)
+    return RoundPlan(
+        source.name, _source(settings, source), source.every, stream_for, _sorting(settings, source)
+    )
+
+
+def _sorting(settings: Settings, source: written.Source) -> str:
+    """Differs whenever the same document would be sorted into other streams or under other keys."""
+    template = source.streams.model_dump_json(exclude={"title", "slate", "judgement", "model"})
+    text = f"{template} {sorted(source.leave_out)} {source.zone or settings.service.zone}"
+    return hashlib.sha256(text.encode("utf-8", "surrogatepass")).hexdigest()[:8]
 
 
 def _source(settings: Settings, source: written.Source) -> SourcePlan:

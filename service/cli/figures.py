@@ -1,9 +1,19 @@
 """Figures of posteriors, for people and for machines. Pure."""
 
+import datetime
+
 from detectors.posterior import Quantiles, RunLengths, Weighted
+from service.tell.effect import known_from_above, under_words
 from storage.posteriors import StoredPosterior
 
 LEVEL_COLUMN = "level (5 to 95 %)"
+
+
+def place_text(shape: str, key: str, at: datetime.date | datetime.datetime) -> str:
+    """What a count is called in a table: an interval by its key, a release by its date."""
+    if shape == "calendar":
+        return key
+    return at.isoformat(timespec="minutes") if isinstance(at, datetime.datetime) else at.isoformat()
 
 
 def figures_json(stored: StoredPosterior) -> dict[str, object]:
@@ -30,7 +40,9 @@ def quantiles_json(level: Quantiles) -> tuple[float, float, float]:
 
 
 def quantiles_text(level: Quantiles) -> str:
-    """A level with its range."""
+    """A level with its range, or what it lies under where no more is known."""
+    if known_from_above(level):
+        return under_words(level)
     low, mid, high = (_level_number(value) for value in quantiles_json(level))
     return f"{mid} ({low} to {high})"
 

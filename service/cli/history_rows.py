@@ -5,7 +5,7 @@ from dataclasses import dataclass
 
 from sqlalchemy import Connection
 
-from service.cli.history_view import label_of
+from service.cli.figures import place_text
 from storage.posteriors import StoredPosterior, evidence, history
 from storage.streams import Stream
 
@@ -41,7 +41,7 @@ def labels_for(conn: Connection, stream: Stream, rows: tuple[StoredPosterior, ..
     # Groups of old runs span an eighth of their age; twice the length reaches beyond any of them.
     span = last.counted - min(row.counted for row in rows) + 2 * longest + 1
     known = history(conn, stream.id, limit=span + _newer(conn, stream, last))
-    return {row.counted: label_of(stream, row) for row in known}
+    return {row.counted: place_text(stream.shape, row.key, row.at) for row in known}
 
 
 def _newer(conn: Connection, stream: Stream, last: StoredPosterior) -> int:

@@ -63,11 +63,6 @@ def history_json(stored: StoredPosterior) -> dict[str, object]:
     }
 
 
-def label_of(stream: Stream, stored: StoredPosterior) -> str:
-    """What a count is called: an interval by its key, a release by its date."""
-    return stored.key if stream.shape == "calendar" else stored.at.isoformat()
-
-
 def _say_head(stream: Stream) -> None:
     say(stream.id if stream.title == stream.id else f"{stream.title} ({stream.id})")
 

@@ -2,7 +2,7 @@
 
 from collections.abc import Mapping, Sequence
 
-from service.cli.figures import probability_text, quantiles_json
+from service.cli.figures import place_text, probability_text, quantiles_json
 from service.cli.show import Cell, say, show_table
 from service.tell.gather import Untold, story_of
 from service.tell.words import sentence
@@ -23,7 +23,7 @@ def show_shifts(shifts: Sequence[Shift], streams: Mapping[str, Stream]) -> None:
     if not shifts:
         say("No shift has been announced.")
         return
-    show_table(COLUMNS, [_cells(shift) for shift in shifts])
+    show_table(COLUMNS, [_cells(shift, streams[shift.stream_id].shape) for shift in shifts])
     say("")
     for shift in shifts[:MOST_SENTENCES]:
         say(sentence(story_of(Untold(shift, streams[shift.stream_id]))))
@@ -67,11 +67,11 @@ def shift_json(shift: Shift, streams: Mapping[str, Stream]) -> dict[str, object]
     }
 
 
-def _cells(shift: Shift) -> list[Cell]:
+def _cells(shift: Shift, shape: str) -> list[Cell]:
     return [
         shift.stream_id,
-        shift.start_key,
-        shift.announced_key,
+        place_text(shape, shift.start_key, shift.start_at),
+        place_text(shape, shift.announced_key, shift.announced_at),
         probability_text(shift.probability),
         shift.state,
         told_text(shift),

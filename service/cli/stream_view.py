@@ -5,7 +5,7 @@ import shlex
 from collections import Counter
 from collections.abc import Sequence
 
-from service.cli.figures import LEVEL_COLUMN, figures_json, probability_text, quantiles_text
+from service.cli.figures import LEVEL_COLUMN, figures_json, place_text, probability_text, quantiles_text
 from service.cli.show import Cell, say, show_telling
 from service.cli.standings import StreamStanding
 from service.standing import Standing
@@ -85,7 +85,7 @@ def _cells(one: StreamStanding, slate: str | None) -> list[Cell]:
     figures: list[Cell] = [None, None, None, None]
     if newest is not None:
         figures = [
-            newest.key if stream.shape == "calendar" else newest.at,
+            place_text(stream.shape, newest.key, newest.at),
             newest.count,
             quantiles_text(newest.level),
             probability_text(newest.recent_shift),

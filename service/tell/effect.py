@@ -18,7 +18,7 @@ BOUNDED_BELOW = 2 * LOWEST_LEVEL
 def moved_words(before: Quantiles, after: Quantiles) -> str:
     """Such as "fell by about 40 %, from about 1,050 to about 640" or "fell from about 1,050 to under 1.1"."""
     levels = _levels_words(before, after)
-    if _is_bound(before) or _is_bound(after):
+    if known_from_above(before) or known_from_above(after):
         return f"{_direction(before, after)} {levels}"
     return f"{_effect_words(before, after)}, {levels}"
 
@@ -46,29 +46,31 @@ def _levels_words(before: Quantiles, after: Quantiles) -> str:
 
 def _direction(before: Quantiles, after: Quantiles) -> str:
     """Which way it went, where one level is a bound; of two bounds nobody can say."""
-    if _is_bound(before) and _is_bound(after):
+    if known_from_above(before) and known_from_above(after):
         return "moved"
-    if _is_bound(after):
+    if known_from_above(after):
         return "fell" if after.mid < before.mid else "moved"
     return "rose" if before.mid < after.mid else "moved"
 
 
-def _is_bound(level: Quantiles) -> bool:
+def known_from_above(level: Quantiles) -> bool:
+    """Whether the level reaches down to the lowest ones that are told apart."""
     return level.low <= BOUNDED_BELOW and math.isfinite(level.high)
 
 
 def _level(level: Quantiles, finest: float) -> str:
-    if _is_bound(level):
-        return f"under {_bound(max(level.high, LOWEST_LEVEL))}"
+    if known_from_above(level):
+        return under_words(level)
     words = rounded(Between(level.mid, level.low, level.high), finest=finest)
     return words if words == "unknown" else f"about {words}"
 
 
-def _bound(value: float) -> str:
-    """Two digits, rounded up, since it is a bound."""
+def under_words(level: Quantiles) -> str:
+    """Such as "under 1.1": two digits, rounded up, since it is a bound."""
+    value = max(level.high, LOWEST_LEVEL)
     step = math.pow(10.0, math.floor(math.log10(value)) - 1)
     decimals = max(0, -math.floor(math.log10(step) + 1e-9))
-    return f"{math.ceil(value / step - 1e-9) * step:,.{decimals}f}"
+    return f"under {math.ceil(value / step - 1e-9) * step:,.{decimals}f}"
 
 
 def _times(before: Quantiles, after: Quantiles) -> Between:

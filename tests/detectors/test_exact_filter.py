@@ -20,7 +20,11 @@ UNMERGED = Accuracy(merging=math.inf, drop_below=0.0, crop_below=0.0, early=1000
 
 
 def gap_pmf(gap, t):
-    return math.comb(t - 1, gap.shape - 1) * gap.p**gap.shape * (1 - gap.p) ** (t - gap.shape) if t >= gap.shape else 0.0
+    return (
+        math.comb(t - 1, gap.shape - 1) * gap.p**gap.shape * (1 - gap.p) ** (t - gap.shape)
+        if t >= gap.shape
+        else 0.0
+    )
 
 
 def gap_survival(gap, a):
@@ -93,7 +97,10 @@ def enumerated(model, observations, grid, dispersion, wander):
         spacing = float(grid.spacing[pair])
         jump = dense_jump(model.jump, spacing, size)
         chances = [count_probability(model, o, o.exposure * level, dispersion[pair]) for o in observations]
-        walks = [dense_walk(size, wander[pair] * math.sqrt(b - a) / spacing) for a, b in itertools.pairwise(positions)]
+        walks = [
+            dense_walk(size, wander[pair] * math.sqrt(b - a) / spacing)
+            for a, b in itertools.pairwise(positions)
+        ]
         for cuts in itertools.product((False, True), repeat=n - 1):
             starts = [0, *(i + 1 for i, cut in enumerate(cuts) if cut)]
             weight = np.full(size, spacing) * chances[0]
@@ -109,12 +116,18 @@ def enumerated(model, observations, grid, dispersion, wander):
 
 CASES = {
     "even gaps, k = 2": (
-        Model(gap=GapPrior(2, 9.0), dispersions=(2.0, 30.0), wanders=((0.0, 1.0), (0.1, 0.5)), accuracy=UNMERGED),
+        Model(
+            gap=GapPrior(2, 9.0), dispersions=(2.0, 30.0), wanders=((0.0, 1.0), (0.1, 0.5)), accuracy=UNMERGED
+        ),
         [Observation(i, x) for i, x in enumerate([14, 9, 12, 31, 28, 40, 33, 30])],
     ),
     "k = 3, ordinary first run, Poisson": (
         Model(
-            gap=GapPrior(3, 8.0), dispersions=(math.inf,), wanders=((0.0, 1.0),), first_run="ordinary", accuracy=UNMERGED
+            gap=GapPrior(3, 8.0),
+            dispersions=(math.inf,),
+            wanders=((0.0, 1.0),),
+            first_run="ordinary",
+            accuracy=UNMERGED,
         ),
         [Observation(i, x) for i, x in enumerate([3, 5, 4, 4, 11, 14, 12])],
     ),
@@ -138,7 +151,11 @@ CASES = {
     ),
     "constant hazard, no one-offs": (
         Model(
-            gap=GapPrior(1, 6.0), one_off_share=0.0, dispersions=(1.0, 8.0), wanders=((0.05, 1.0),), accuracy=UNMERGED
+            gap=GapPrior(1, 6.0),
+            one_off_share=0.0,
+            dispersions=(1.0, 8.0),
+            wanders=((0.05, 1.0),),
+            accuracy=UNMERGED,
         ),
         [Observation(i, x) for i, x in enumerate([2, 0, 3, 1, 9, 7, 12, 10])],
     ),

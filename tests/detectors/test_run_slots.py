@@ -64,11 +64,11 @@ def test_nothing_is_merged_when_merging_is_off() -> None:
     assert (slots.oldest == slots.newest).all()
 
 
-def test_a_group_stands_at_the_mean_of_its_starts() -> None:
+def test_a_group_stands_at_the_weighted_mean_of_its_starts() -> None:
     slots = RunSlots(np.array([1, 2, 6]), np.array([1, 5, 7]), np.array([0, 10, 30]))
-    merged = after_merge(slots, 1, 2)
-    # Four runs that stand at 10 and two at 30.
-    assert merged.start_position.tolist() == [0, (4 * 10 + 2 * 30) // 6, 0]
+    merged = after_merge(slots, 1, 2, 0.75)
+    # Three quarters of the probability stand at 10 and one quarter at 30.
+    assert merged.start_position.tolist() == [0, 15, 0]
     assert merged.oldest.tolist() == [1, 2, 0]
     assert merged.newest.tolist() == [1, 7, 0]
     # The slots that it came from are unchanged.

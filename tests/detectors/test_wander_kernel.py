@@ -1,4 +1,4 @@
-"""The random walk on the grid keeps mass, variance and, where it can, the fourth moment."""
+"""The random walk on the grid keeps mass, variance and fourth moment."""
 
 import math
 
@@ -19,17 +19,27 @@ def moment(weights: tuple[float, ...], power: int) -> float:
 @settings(max_examples=200, deadline=None)
 def test_mass_and_variance(step: float) -> None:
     weights = kernel(step)
-    assert min(weights) >= 0.0
+    # The outermost of the five points may be negative, by less than 1 / 288 of the weight that moves.
+    assert min(weights) >= -1.0 / 288.0 - 1e-15
     assert moment(weights, 0) == pytest.approx(1.0, abs=1e-12)
     # Above one spacing the tails beyond 5.5 standard deviations are cut.
     assert moment(weights, 2) == pytest.approx(step**2, rel=1e-5 if step > 1.0 else 1e-12, abs=1e-15)
 
 
-@given(st.floats(1.0 / math.sqrt(3.0), 12.0))
+@given(st.floats(0.01, 12.0))
 @settings(max_examples=100, deadline=None)
 def test_fourth_moment_of_a_gaussian_is_three_variances_squared(step: float) -> None:
-    # From u = 1 / sqrt(3) on no weight of the five points is negative.
-    assert moment(kernel(step), 4) == pytest.approx(3.0 * step**4, rel=1e-4 if step > 1.0 else 1e-9)
+    assert moment(kernel(step), 4) == pytest.approx(3.0 * step**4, rel=1e-4 if step > 1.0 else 1e-7)
+
+
+@given(st.floats(0.0, 1.0), st.floats(0.8, 3.0))
+@settings(max_examples=100, deadline=None)
+def test_weights_as_smooth_as_the_spacing_keeps_them_stay_positive(step: float, sd: float) -> None:
+    """The spacing is at most 0.8 or 1.8 posterior standard deviations; here the sd is in spacings."""
+    size, middle = 41, 20
+    gaussian = np.exp(-0.5 * ((np.arange(size) - middle) / sd) ** 2)
+    walk = walk_matrix(LevelGrid(np.array([1.0]), np.array([0]), np.array([size])), np.array([step]))
+    assert (walk @ gaussian).min() >= -1e-12
 
 
 def test_no_step_is_the_identity() -> None:
