@@ -29,8 +29,8 @@ FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
 UPKEEP_EVERY = 4
-EMPTY_ROW = 1e-8
-WORTH_SHRINKING = 0.75
+EMPTY_ROW = 1e-6
+WORTH_SHRINKING = 0.85
 TOO_FINE = 2.9
 SCARCE_RUN = 1e-4
 STALE_FACTOR = 1e-3

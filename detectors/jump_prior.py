@@ -29,7 +29,7 @@ class JumpPrior:
     JRSS B 72, 143-170.
     """
 
-    smallest: float = math.log(1.15)
+    smallest: float = math.log1p(0.15)
     scale: float = 0.4
 
     def __post_init__(self) -> None:

@@ -165,12 +165,14 @@ def _update(state: FilterState, counts: tuple[Observation, ...]) -> tuple[Filter
     walk = bench.walk(gap)
     shifting = weights @ (state.run_factor * hazard).astype(weights.dtype)
     moved = walk.scaled(row_factor, weights.dtype) @ weights
+    # Far out in a tail the walk's negative outer weights can win, by less than a millionth of the peak.
+    np.maximum(moved, 0.0, out=moved)
     slots, slot = _free_slot(state.slots)
     factor = state.run_factor * (1.0 - hazard)
     if slots.used.size > moved.shape[1]:
         moved = np.concatenate((moved, np.zeros((moved.shape[0], BLOCK), dtype=moved.dtype)), axis=1)
         factor = np.concatenate((factor, np.zeros(BLOCK)))
-    arriving = walk.plain(weights.dtype) @ shifting
+    arriving = np.maximum(walk.plain(weights.dtype) @ shifting, 0.0)
     moved[:, slot] = bench.jump(arriving) * row_factor
     factor[slot] = 1.0
     counted = state.counted + 1

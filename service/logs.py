@@ -67,6 +67,8 @@ def configure(form: Form, level: str, *, stream: TextIO | None = None) -> None:
     root.handlers[:] = [handler]
     # The HTTP library writes addresses, which may be secrets, into lines below this level.
     root.setLevel(logging.WARNING)
+    # The scheduler warns whenever a pass outlasts its interval, as every first fold does: that is foreseen.
+    logging.getLogger("apscheduler").setLevel(logging.ERROR)
     ours.setLevel(level.upper())
 
 

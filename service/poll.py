@@ -4,10 +4,11 @@ import os
 import random
 import threading
 from collections.abc import Sequence
+from dataclasses import dataclass
 from pathlib import Path
 
 from service.clock import SystemClock
-from service.deliver.loop import deliver_due
+from service.deliver.loop import Counts, deliver_due
 from service.round.plans import RoundPlan
 from service.wiring import Wired, wire
 from service.work import Bench, pass_for
@@ -24,7 +25,15 @@ class UnknownSource(ValueError):
         super().__init__(f'No source is named "{got}". The settings name: {", ".join(known) or "none"}.')
 
 
-def poll_once(settings: Path, sources: Sequence[str]) -> tuple[Round, ...]:
+@dataclass(frozen=True, slots=True)
+class Polled:
+    """The rounds that were made, and what became of the deliveries that were due."""
+
+    rounds: tuple[Round, ...]
+    deliveries: Counts
+
+
+def poll_once(settings: Path, sources: Sequence[str]) -> Polled:
     """Read, keep, advance, record, tell and deliver, for these sources or for all.
 
     Raises
@@ -39,9 +48,9 @@ def poll_once(settings: Path, sources: Sequence[str]) -> tuple[Round, ...]:
         upgrade(store)
         bench = Bench(store, clock, wired.takers, stop)
         done = [pass_for(bench, plan).round.round_id for plan in plans]
-        deliver_due(store, wired.outlets, clock, random.random)
+        deliveries = deliver_due(store, wired.outlets, clock, random.random)
         with store.reading() as conn:
-            return tuple(get_round(conn, round_id) for round_id in done)
+            return Polled(tuple(get_round(conn, round_id) for round_id in done), deliveries)
 
 
 def _named(wired: Wired, name: str) -> RoundPlan:

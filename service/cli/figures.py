@@ -10,10 +10,8 @@ LEVEL_COLUMN = "level (5 to 95 %)"
 
 
 def place_text(shape: str, key: str, at: datetime.date | datetime.datetime) -> str:
-    """What a count is called in a table: an interval by its key, a release by its date."""
-    if shape == "calendar":
-        return key
-    return at.isoformat(timespec="minutes") if isinstance(at, datetime.datetime) else at.isoformat()
+    """What a count is called in a table: an interval by its key, a release by its day."""
+    return key if shape == "calendar" else at.isoformat()[: len("2026-03-02")]
 
 
 def figures_json(stored: StoredPosterior) -> dict[str, object]:

@@ -117,7 +117,10 @@ def _history(found: tuple[Shift, ...]) -> str:
     if not found:
         return "History folded: no shift found in it."
     listed = "; ".join(f"{TITLES.get(one.stream_id)} {_moved(one)} about {one.start_key}" for one in found)
-    return f"History folded. Shifts found in it are recorded, and nobody is told: {listed} (levels as filtered then)."
+    return (
+        f"History folded. Shifts found in it are recorded, and nobody is told: {listed} "
+        "(levels as filtered then)."
+    )
 
 
 def _announced(shift: Shift) -> str:

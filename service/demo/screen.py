@@ -15,7 +15,7 @@ DATE_WIDTH = len("2026-03-02  ")
 
 def say(text: str = "") -> None:
     """A paragraph."""
-    _put(textwrap.fill(text, _width()))
+    _put("\n".join(_wrapped(text, _width())))
 
 
 def say_as_it_is(text: str) -> None:
@@ -31,7 +31,7 @@ def heading(text: str) -> None:
 
 def tell(date: datetime.date, text: str) -> None:
     """What happened on a date of the fast clock."""
-    lines = textwrap.wrap(text, _width() - DATE_WIDTH)
+    lines = _wrapped(text, _width() - DATE_WIDTH)
     _put(f"{click.style(date.isoformat(), dim=True)}  {lines[0]}")
     for line in lines[1:]:
         _put(" " * DATE_WIDTH + line)
@@ -39,7 +39,7 @@ def tell(date: datetime.date, text: str) -> None:
 
 def quote(text: str) -> None:
     """What somebody else said, under what was told last."""
-    for line in textwrap.wrap(text, _width() - DATE_WIDTH - 2):
+    for line in _wrapped(text, _width() - DATE_WIDTH - 2):
         _put(" " * DATE_WIDTH + "  " + click.style(line, bold=True))
 
 
@@ -48,6 +48,11 @@ def commands(pairs: Iterable[tuple[str, str]]) -> None:
     for purpose, command in pairs:
         _put(f"  {purpose}:")
         _put(f"      {click.style(command, bold=True)}")
+
+
+def _wrapped(text: str, width: int) -> list[str]:
+    # Paths and dates stay whole.
+    return textwrap.wrap(text, width, break_long_words=False, break_on_hyphens=False)
 
 
 def _put(text: str) -> None:

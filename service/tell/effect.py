@@ -55,7 +55,8 @@ def _direction(before: Quantiles, after: Quantiles) -> str:
 
 def known_from_above(level: Quantiles) -> bool:
     """Whether the level reaches down to the lowest ones that are told apart."""
-    return level.low <= BOUNDED_BELOW and math.isfinite(level.high)
+    # Tenfold, since a bound is rounded up.
+    return level.low <= BOUNDED_BELOW and math.isfinite(10 * level.high)
 
 
 def _level(level: Quantiles, finest: float) -> str:

@@ -57,11 +57,11 @@ def settings(tmp_path: Path, studio, counts_of) -> Path:
 
 
 def test_polling_by_hand(settings: Path) -> None:
-    plays, letters = poll_once(settings, [])
+    plays, letters = poll_once(settings, []).rounds
     assert (plays.source, plays.outcome, plays.rows_used) == ("plays", GOOD, 14)
     assert (letters.source, letters.outcome) == ("letters", FAILED)
     assert "nonesuch.csv" in (letters.message or "")
-    (again,) = poll_once(settings, ["plays"])
+    (again,) = poll_once(settings, ["plays"]).rounds
     assert (again.outcome, again.rows_used) == (NOTHING_NEW, 0)
 
 

@@ -13,7 +13,8 @@ from service.cli.options import Given, json_option, settings_option
 def command(ctx: click.Context, sources: tuple[str, ...], as_json: bool) -> None:
     """One round now for each SOURCE, or for all: read, keep, advance, record, tell, deliver; then end.
 
-    May be used beside a running daemon. Leaves with 4 if a source could not be read.
+    May be used beside a running daemon. Leaves with 4 if a source could not be read, else with 7 if a delivery
+    that was due did not arrive.
     """
     from service.cli.rounds_view import show_polled
     from service.cli.show import show_json
@@ -25,10 +26,12 @@ def command(ctx: click.Context, sources: tuple[str, ...], as_json: bool) -> None
 
     given: Given = ctx.obj
     configure("words", "warning")
-    rounds = poll_once(given.settings, sources)
+    polled = poll_once(given.settings, sources)
     if as_json:
-        show_json([round_json(one) for one in rounds])
+        show_json([round_json(one) for one in polled.rounds])
     else:
-        show_polled(rounds)
-    if any(one.outcome == FAILED for one in rounds):
+        show_polled(polled.rounds)
+    if any(one.outcome == FAILED for one in polled.rounds):
         ctx.exit(Exit.UNREADABLE)
+    if polled.deliveries.put_off or polled.deliveries.given_up:
+        ctx.exit(Exit.NOT_DELIVERED)

@@ -156,6 +156,16 @@ def test_the_stored_run_length_history_says_since_when(house: House) -> None:
     assert f"before {FIRST}" in out.splitlines()[-1]
 
 
+def test_tables_of_days_fit_an_ordinary_terminal(house: House) -> None:
+    house.poll_before_the_fall()
+    house.ask("poll")
+    for arguments in (("streams",), ("shifts",), ("history", STREAM), ("deliveries",), ("rounds",)):
+        # Lines of a table have more than one space somewhere; prose, which is wrapped there, has not.
+        table = [line for line in house.run(*arguments)[1].splitlines() if "  " in line]
+        assert len(table) > 1
+        assert max(map(len, table)) <= 80, arguments
+
+
 def test_rebuilding_says_the_same_again_and_tells_nobody(house: House, receiver) -> None:
     house.serve(len(COUNTS))
     house.ask("poll")

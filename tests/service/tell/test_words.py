@@ -6,7 +6,7 @@ from collections.abc import Callable
 from dataclasses import replace
 
 import pytest
-from hypothesis import given
+from hypothesis import example, given
 from hypothesis import strategies as st
 
 from detectors.posterior import Quantiles
@@ -180,6 +180,8 @@ QUANTILES = st.tuples(LEVELS, LEVELS, LEVELS).map(lambda three: Quantiles(*sorte
 
 
 @given(QUANTILES, QUANTILES, st.floats(), st.text(), st.text(max_size=8))
+@example(Quantiles(0.0, 1.0, 1.7e308), Quantiles(1.797e308, 1.797e308, 1.797e308), 0.9, "", "")
+@example(Quantiles(0.0, 1.0, 1.797e308), Quantiles(0.01, 5e-324, 0.0), 0.9, "", "")
 def test_no_figure_and_no_title_breaks_a_sentence(before, after, probability, title, release) -> None:
     first = Marker("a", datetime.date(2026, 3, 2), release, 7)
     told = ShiftStory(
