@@ -23,6 +23,8 @@ FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
 MOST_WALKS = 8
+LEAST = 1e-300
+UNEXPLAINED = 1e-25
 
 
 @dataclass(frozen=True)
@@ -150,9 +152,21 @@ class Bench:
             log_ordinary = log_negative_binomial(count, mean, dispersion)
         else:
             log_ordinary = self.rows.log_probability(self.over_pairs(exact), exposure)
+        if self.model.one_off_share == 0.0:
+            return self._without_one_offs(log_ordinary)
         total, one_off, ordinary = self._mixed(count, mean, log_ordinary)
         largest = np.maximum.reduceat(total, self.first_row)
         return Likelihood(total / self.over_rows(largest), one_off / total, ordinary, np.log(largest))
+
+    def _without_one_offs(self, log_ordinary: FloatArray) -> Likelihood:
+        """In logs up to the division: without the broad component a count may be next to impossible.
+
+        Not less than `UNEXPLAINED` of the best node's probability, so that after two counts that no run of the
+        model explains something is left to go on with.
+        """
+        largest = np.maximum.reduceat(log_ordinary, self.first_row)
+        probability = np.maximum(np.exp(log_ordinary - self.over_rows(largest)), UNEXPLAINED)
+        return Likelihood(probability, np.zeros_like(probability), np.exp(log_ordinary), largest)
 
     def log_likelihood_at(self, rows: IntArray, counts: Sequence[Observation]) -> FloatArray:
         """Log probability of each stream's count at some of the nodes, shape of `rows`."""
@@ -162,7 +176,7 @@ class Bench:
         relative_sd = np.array([one.relative_sd for one in counts])[stream]
         dispersion = effective_dispersion(self.row_dispersion[rows], relative_sd)
         total, _, _ = self._mixed(count, mean, log_negative_binomial(count, mean, dispersion))
-        return np.log(np.maximum(total, 1e-300))
+        return np.log(np.maximum(total, LEAST))
 
     def _mixed(
         self, count: FloatArray, mean: FloatArray, log_ordinary: FloatArray

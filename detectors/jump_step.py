@@ -16,6 +16,8 @@ IntArray = NDArray[np.int64]
 Map = Callable[[NDArray[np.floating]], NDArray[np.floating]]
 
 LARGEST_MATRIX = 256
+FINE = 0.002
+"""Below this spacing the sum over the nodes is the integral, 1, to nine digits."""
 FARTHEST_JUMP = 200.0
 """Jumps of the log level beyond this (a factor of e^200) are left out of the normalising sum."""
 
@@ -62,9 +64,12 @@ def _independent(jump: IndependentLevels, grid: LevelGrid) -> Map:
 @lru_cache(maxsize=256)
 def jump_weights(jump: JumpPrior, spacing: float, size: int) -> FloatArray:
     """Probability of a jump by 0, 1, ..., size - 1 nodes upwards (or downwards: it is symmetric)."""
-    offsets = np.arange(max(int(FARTHEST_JUMP / spacing) + 2, size), dtype=np.float64)
-    density = jump.density(offsets * spacing)
-    weights: FloatArray = (density / (2.0 * density.sum() - density[0]))[:size]
+    if spacing < FINE:
+        weights = jump.density(np.arange(size, dtype=np.float64) * spacing) * spacing
+    else:
+        offsets = np.arange(max(int(FARTHEST_JUMP / spacing) + 2, size), dtype=np.float64)
+        density = jump.density(offsets * spacing)
+        weights = (density / (2.0 * density.sum() - density[0]))[:size]
     weights.flags.writeable = False
     return weights
 

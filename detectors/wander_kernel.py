@@ -15,14 +15,16 @@ FIVE_POINT_LIMIT = 1.0
 """Above this step (in units of the spacing) the sampled Gaussian keeps its variance by itself."""
 
 
-@lru_cache(maxsize=4096)
-def kernel(step: float) -> tuple[float, ...]:
+@lru_cache(maxsize=512)
+def kernel(step: float, farthest: int = 10_000) -> tuple[float, ...]:
     """Weights of a random-walk step on a grid, from the centre outwards.
 
     Parameters
     ----------
     step : float
         Standard deviation of the step in units of the spacing, at least 0.
+    farthest : int
+        Steps over more nodes than this are left out (a grid has so many nodes at most).
 
     Returns
     -------
@@ -50,9 +52,12 @@ def kernel(step: float) -> tuple[float, ...]:
         far = (3.0 * u2 * u2 - u2) / 24.0
         near = u2 / 2.0 - 4.0 * far
         return (1.0 - 2.0 * (near + far), near, far)
-    half = math.ceil(5.5 * step)
+    half = min(math.ceil(5.5 * step), farthest)
     weights = np.exp(-0.5 * (np.arange(half + 1) / step) ** 2)
     total = weights[0] + 2.0 * weights[1:].sum()
+    if half == farthest:
+        # By Poisson's summation formula the endless sum is this to eight digits.
+        total = step * math.sqrt(2.0 * math.pi)
     return tuple((weights / total).tolist())
 
 
@@ -75,7 +80,7 @@ def walk_matrix(grid: LevelGrid, step: FloatArray) -> "sparse.csr_array":
     for spacing, size, start, sd in zip(
         grid.spacing.tolist(), grid.size.tolist(), grid.start.tolist(), step.tolist(), strict=True
     ):
-        block_data, block_columns, block_counts = _band(kernel(round(sd / spacing, 12)), size)
+        block_data, block_columns, block_counts = _band(kernel(round(sd / spacing, 12), size), size)
         data.append(block_data)
         columns.append(block_columns + start)
         counts.append(block_counts)
@@ -85,7 +90,7 @@ def walk_matrix(grid: LevelGrid, step: FloatArray) -> "sparse.csr_array":
     )
 
 
-@lru_cache(maxsize=4096)
+@lru_cache(maxsize=512)
 def _band(weights: tuple[float, ...], size: int) -> tuple[FloatArray, NDArray[np.int64], NDArray[np.int64]]:
     half = min(len(weights) - 1, size - 1)
     offsets = np.arange(-half, half + 1)

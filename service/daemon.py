@@ -112,9 +112,13 @@ def _one_pass(
 
 
 def _wait_seconds(store: Store, plan: RoundPlan, clock: Clock) -> float:
-    """Real seconds to a source's first round: none when one is overdue, as after downtime or a crash."""
+    """Real seconds to a source's first round: none when one is overdue, as after downtime or a crash.
+
+    Never longer than between two rounds, even if the last one seems to lie ahead: clocks are put right.
+    """
     with store.reading() as conn:
         last = list_rounds(conn, source=plan.name, limit=1)
     if not last or last[0].outcome == BROKEN_OFF:
         return 0.0
-    return max(clock.real_seconds(last[0].started_utc + plan.every - clock.now()), 0.0)
+    wait = last[0].started_utc + plan.every - clock.now()
+    return max(clock.real_seconds(min(wait, plan.every)), 0.0)

@@ -30,10 +30,14 @@ MOST_TRIES = 8
 
 @dataclass(frozen=True, slots=True)
 class Timing:
-    """What a fold must know of its source's rounds: how far it reaches, and when it was not read."""
+    """What a fold must know of its source's rounds: how far it reaches, and when it was and was not read.
+
+    `read_utc` is the start of the last round that reached the source.
+    """
 
     source_reaches: datetime.date | datetime.datetime | None
     downtimes: tuple[Downtime, ...]
+    read_utc: datetime.datetime
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,6 +57,7 @@ class _Found:
     begun: int
     body: bytes | None
     folded_before: int
+    checkpoints: int
     up_to_date: bool
 
 
@@ -98,7 +103,7 @@ def _look(conn: Connection, plan: StreamPlan, now: datetime.datetime, timing: Ti
     require_same_kind(conn, plan)
     ripe = ripe_readings(conn, plan.id) if isinstance(plan.shape, ReleaseShape) else ()
     stored = Stored(newest_readings(conn, plan.id), ripe)
-    observed = observe(plan, stored, now, source_reaches=timing.source_reaches)
+    observed = observe(plan, stored, _whole_by(plan, now, timing), source_reaches=timing.source_reaches)
     marks = list_checkpoints(conn, plan.id, fingerprint=plan.fingerprint)
     good = next((mark for mark in marks if _rests_on(mark, observed)), None)
     return _Found(
@@ -108,8 +113,18 @@ def _look(conn: Connection, plan: StreamPlan, now: datetime.datetime, timing: Ti
         begun=0 if good is None else good.folded,
         body=None if good is None else checkpoint_bytes(conn, good.id),
         folded_before=_folded_before(conn, plan.id),
+        checkpoints=len(marks),
         up_to_date=stream.fingerprint == plan.fingerprint and is_recorded(marks, observed),
     )
+
+
+def _whole_by(plan: StreamPlan, now: datetime.datetime, timing: Timing) -> datetime.datetime:
+    """The instant by which an interval must be over for its count to be whole.
+
+    One that was open when its source was last read has only a part of its count, though it be over by now.
+    Releases need no such bound: which of their readings count is noted when they are read.
+    """
+    return now if isinstance(plan.shape, ReleaseShape) else min(now, timing.read_utc)
 
 
 def _rests_on(mark: CheckpointMark, observed: Observed) -> bool:
@@ -141,7 +156,7 @@ def _folded_before(conn: Connection, stream_id: str) -> int:
 
 @dataclass(frozen=True)
 class _TakenUp:
-    """Where a fold begins, and how many places had been folded under other settings or another model."""
+    """Where a fold begins, and how many places had been folded under other settings or are rebuilt."""
 
     begun: int
     checkpoint: Checkpoint
@@ -149,7 +164,8 @@ class _TakenUp:
 
 
 def _take_up(store: Store, plan: StreamPlan, found: _Found) -> _TakenUp:
-    same = found.stream.fingerprint in (None, plan.fingerprint)
+    # Without checkpoints a stream is rebuilt: what was there to be seen before is no news then either.
+    same = found.stream.fingerprint in (None, plan.fingerprint) and found.checkpoints > 0
     try:
         begun, checkpoint = resume(found.begun, found.body, plan.model)
     except UnreadableCheckpoint:

@@ -53,7 +53,7 @@ def test_matrix_against_a_dense_one() -> None:
     dense = np.zeros((grid.rows, grid.rows))
     start = 0
     for size, spacing, step in zip((9, 14, 6), (0.5, 0.25, 0.1), steps.tolist(), strict=True):
-        weights = kernel(round(step / spacing, 12))
+        weights = kernel(round(step / spacing, 12), size)
         for i in range(size):
             for j in range(size):
                 if abs(i - j) < len(weights):
