@@ -24,6 +24,7 @@ IntArray = NDArray[np.int64]
 
 MOST_WALKS = 8
 LEAST = 1e-300
+LARGEST_FACTOR = 1e30
 UNEXPLAINED = 1e-25
 
 
@@ -47,7 +48,9 @@ class Walk:
         """The walk followed by a multiplication of each row."""
         data = self.in_single if dtype == np.float32 else self.matrix.data
         result = copy.copy(self.matrix)
-        result.data = data * np.repeat(factor.astype(dtype, copy=False), self.per_row)
+        # The factors of a pair that has no weight left may be beyond single precision.
+        bounded = np.minimum(factor, LARGEST_FACTOR).astype(dtype, copy=False)
+        result.data = data * np.repeat(bounded, self.per_row)
         return result
 
 

@@ -49,6 +49,25 @@ class Step:
 
 
 @dataclass(frozen=True, slots=True)
+class WholeWay:
+    """How much releases differ in their growth from a stated age to the last one, taken in one step.
+
+    Attributes
+    ----------
+    rows : int
+        Releases of which both totals are known and no step is left out.
+    size : float
+        Their mean total at the age.
+    relative_variance : float or None
+        Mack's sigma^2 of that one step over f^2 size; None with fewer than two rows.
+    """
+
+    rows: int
+    size: float
+    relative_variance: float | None
+
+
+@dataclass(frozen=True, slots=True)
 class Development:
     """Development factors from each stated age to the next.
 
@@ -58,12 +77,16 @@ class Development:
         The stated ages in days; one more than there are steps.
     steps : tuple of Step
         One entry a step.
+    whole_ways : tuple of WholeWay
+        One for each stated age but the last. Mack's process error adds the steps as if they were
+        uncorrelated; where a release that starts fast goes on fast, the way taken whole shows it.
     left_out : tuple of (int, int)
         Pairs (row, step) that the factors do not use.
     """
 
     ages: tuple[float, ...]
     steps: tuple[Step, ...]
+    whole_ways: tuple[WholeWay, ...] = ()
     left_out: tuple[tuple[int, int], ...] = ()
 
 
@@ -106,7 +129,8 @@ def chain_ladder(triangle: Triangle, *, left_out: Collection[tuple[int, int]] = 
     for place in range(len(triangle.ages) - 1):
         skipped = [row for row, step in left_out if step == place]
         steps.append(_step(triangle, place, skipped, steps))
-    return Development(triangle.ages, tuple(steps), tuple(sorted(left_out)))
+    ways = [_whole_way(triangle, place, left_out) for place in range(len(steps))]
+    return Development(triangle.ages, tuple(steps), tuple(ways), tuple(sorted(left_out)))
 
 
 def usable(triangle: Triangle, place: int) -> BoolArray:
@@ -137,6 +161,16 @@ def _step(triangle: Triangle, place: int, skipped: list[int], before: list[Step]
         counts=counts,
         size=counts / rows if rows else 0.0,
     )
+
+
+def _whole_way(triangle: Triangle, place: int, left_out: Collection[tuple[int, int]]) -> WholeWay:
+    skipped = {row for row, step in left_out if step >= place}
+    ends = Triangle((triangle.ages[place], triangle.ages[-1]), triangle.counts[:, [place, -1]])
+    whole = _step(ends, 0, sorted(skipped), [])
+    variance = None
+    if whole.factor and whole.rows > 1 and whole.variance is not None:
+        variance = whole.variance / (whole.factor**2 * whole.size)
+    return WholeWay(whole.rows, whole.size, variance)
 
 
 def _min_rule(before: list[Step]) -> float | None:

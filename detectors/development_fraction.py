@@ -1,15 +1,18 @@
 """The share of its final total that a release is expected to have at an age, and how sure that is."""
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy.interpolate import PchipInterpolator
 
-from detectors.development import Development, Step
+from detectors.development import Development, Step, WholeWay
 from detectors.errors import UnusableParameter
 
+FloatArray = NDArray[np.float64]
 Basis = Literal["stream", "slate"]
 
 
@@ -56,8 +59,9 @@ class Fraction:
     parameter_sd : float
         Relative standard error of the estimated factors (Mack's; a pooled one includes how streams differ).
     relative_sd : float
-        What enters the filter with the exposure: root of parameter_sd^2 and of that part of process_sd^2
-        which is beyond the chance of counts, since the negative binomial has that chance already.
+        What enters the filter with the exposure, and is not Mack's: the process error of the way taken whole
+        where that is larger, less the chance of counts, which the negative binomial has already; and the
+        parameter error.
     basis : {"stream", "slate"}
         Whose factors these are.
     """
@@ -130,9 +134,10 @@ def expected_fraction(
     process_sd^2 = sum_l sigma_l^2 / (f_l^2 C_l), parameter_sd^2 = sum_l s.e.(f_l)^2 / f_l^2 (Mack 1993,
     Theorem 3, divided by the ultimate squared; the relative error of 1 / F is that of F to first order). If
     a final total were nothing but independent Poisson increments, process_sd^2 would be (1 - 1 / F) / C_k;
-    that part is taken off in `relative_sd`. Between stated ages the log fraction is interpolated
-    monotonically over the log age, the squared deviations linearly. Errors of the factors are common to all counts of one age;
-    the filter takes them as independent.
+    with w the larger of process_sd^2 and `WholeWay.relative_variance` (of enough rows),
+    relative_sd^2 = max(w - (1 - 1 / F) / C_k, 0) + parameter_sd^2. Between stated ages the log fraction is
+    interpolated monotonically over the log age, the squared deviations linearly. Errors of the factors are
+    common to all counts of one age; the filter takes them as independent.
 
     Examples
     --------
@@ -155,7 +160,8 @@ def expected_fraction(
         lacking = _lacking(step, evidence, basis)
         if lacking is not None:
             return NotEnough(age, lacking)
-    return _between(development, first, age, size, basis)
+    at = [_at_stated(development, k, size, evidence) for k in range(first, len(development.ages))]
+    return _between(np.log(development.ages[first:]), np.array(at), age, basis)
 
 
 def fraction_for(
@@ -196,26 +202,35 @@ def _lacking(step: Step, evidence: Evidence, basis: Basis) -> str | None:
     return None
 
 
-def _between(development: Development, first: int, age: float, size: float | None, basis: Basis) -> Fraction:
+def _between(log_ages: FloatArray, at: FloatArray, age: float, basis: Basis) -> Fraction:
     """Interpolate what holds at the stated ages from the one at or before the age on."""
-    ages = np.log(development.ages[first:])
-    at = np.array([_at_stated(development.steps[k:], size) for k in range(first, len(development.ages))])
-    fraction = math.exp(float(PchipInterpolator(ages, at[:, 0])(math.log(age))))
-    process, parameter, chance = (float(np.interp(math.log(age), ages, at[:, part])) for part in (1, 2, 3))
-    beyond = max(process - chance, 0.0)
+    here = math.log(age)
+    fraction = math.exp(float(PchipInterpolator(log_ages, at[:, 0])(here)))
+    process, parameter, beyond = (float(np.interp(here, log_ages, at[:, part])) for part in (1, 2, 3))
     return Fraction(
         age, fraction, math.sqrt(process), math.sqrt(parameter), math.sqrt(beyond + parameter), basis
     )
 
 
-def _at_stated(steps: tuple[Step, ...], size: float | None) -> tuple[float, float, float, float]:
-    """Log fraction at the first step's age; process, parameter and Poisson variance of the way from there."""
+def _at_stated(
+    development: Development, first: int, size: float | None, evidence: Evidence
+) -> tuple[float, float, float, float]:
+    """Log fraction at a stated age; variances of process, parameter, and process beyond chance of counts."""
     grown, process, parameter, chance = 1.0, 0.0, 0.0, 0.0
-    for step in steps:
+    for step in development.steps[first:]:
         factor, variance, error = step.factor or 1.0, step.variance or 0.0, step.standard_error or 0.0
         total = step.size if size is None else size * grown
         process += variance / (factor**2 * total)
         chance += max(factor - 1.0, 0.0) / (factor * total)
         parameter += (error / factor) ** 2
         grown *= factor
-    return -math.log(grown), process, parameter, chance
+    whole = _whole_variance(development.whole_ways[first : first + 1], size, evidence)
+    return -math.log(grown), process, parameter, max(max(process, whole) - chance, 0.0)
+
+
+def _whole_variance(ways: Sequence[WholeWay], size: float | None, evidence: Evidence) -> float:
+    """Relative variance of the way taken whole; 0 where too few rows tell it."""
+    for way in ways:
+        if way.relative_variance is not None and way.rows >= evidence.rows:
+            return way.relative_variance * (1.0 if size is None else way.size / size)
+    return 0.0

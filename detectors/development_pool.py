@@ -5,7 +5,7 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from detectors.development import Development, Step
+from detectors.development import Development, Step, WholeWay
 from detectors.errors import UnusableParameter
 
 _LEAST_VARIANCE = 1e-8
@@ -38,7 +38,8 @@ def pool(developments: Sequence[Development]) -> Development:
     sigma_s^2 / (f_s^2 size_s) weighted by rows - 1, is the relative process variance of a release; v_s = rho
     / rows_s; tau^2 = max(0, (Q - (S - 1)) / (sum w - sum w^2 / sum w)) with w = 1 / v and
     Q = sum w (y - ybar)^2; y = sum y_s / (v_s + tau^2) / sum 1 / (v_s + tau^2), and the relative variance
-    of a stream's factor around exp(y) is tau^2 + 1 / sum 1 / (v_s + tau^2). The process part is Mack's averaged; the rest is not Mack's.
+    of a stream's factor around exp(y) is tau^2 + 1 / sum 1 / (v_s + tau^2). The process part is Mack's,
+    averaged; the rest is not Mack's.
 
     References
     ----------
@@ -55,7 +56,12 @@ def pool(developments: Sequence[Development]) -> Development:
     if len(ages) != 1:
         raise UnusableParameter("developments", f"{len(ages)} sets of ages", "one or more, of the same ages")
     steps = zip(*(development.steps for development in developments), strict=True)
-    return Development(ages.pop(), tuple(_pooled(step) for step in steps))
+    ways = zip(*(development.whole_ways for development in developments), strict=True)
+    return Development(
+        ages=ages.pop(),
+        steps=tuple(_pooled(step) for step in steps),
+        whole_ways=tuple(_pooled_way(way) for way in ways),
+    )
 
 
 def _pooled(steps: Sequence[Step]) -> Step:
@@ -80,6 +86,18 @@ def _pooled(steps: Sequence[Step]) -> Step:
         counts=sum(step.counts for step in telling),
         size=size,
         streams=len(telling),
+    )
+
+
+def _pooled_way(ways: Sequence[WholeWay]) -> WholeWay:
+    telling = [(way, way.relative_variance) for way in ways if way.relative_variance is not None]
+    if not telling:
+        return WholeWay(0, 0.0, None)
+    freedom = [way.rows - 1 for way, _ in telling]
+    return WholeWay(
+        rows=sum(way.rows for way, _ in telling),
+        size=float(np.median([way.size for way, _ in telling])),
+        relative_variance=float(np.average([variance for _, variance in telling], weights=freedom)),
     )
 
 

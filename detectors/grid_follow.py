@@ -190,6 +190,13 @@ def _moved(state: FilterState, new: LevelGrid, respace: NDArray[np.bool_]) -> Fi
     beyond = (new.log_level < new.spread(old.lowest) - 1e-9) | (
         new.log_level > new.spread(old.highest) + 1e-9
     )
-    fill(weights, np.flatnonzero(beyond), bench, state.recent, state.slots, state.run_factor)
-    # The divisor stays what it was: the weight that was filled in had been missing from the evidence.
-    return replace(state, bench=bench, weights=weights)
+    filled = fill(
+        weights,
+        np.flatnonzero(beyond),
+        bench,
+        state.recent,
+        state.slots,
+        state.run_factor,
+        state.pair_total,
+    )
+    return replace(state, bench=bench, weights=weights, pair_total=state.pair_total + filled)

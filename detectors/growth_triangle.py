@@ -206,8 +206,8 @@ def _cells(growth: Growth, stated: FloatArray, widest_gap: float) -> FloatArray:
     at_reading = inside & (ages[np.minimum(after, ages.size - 1)] == stated)
     gap = np.diff(ages, prepend=-np.inf, append=np.inf)[after]
     told = at_reading | (inside & (gap <= widest_gap * stated))
-    if ages.size == 1:
-        cells[told] = growth.counts[0]
-    else:
-        cells[told] = PchipInterpolator(ages, np.asarray(growth.counts, dtype=np.float64))(stated[told])
+    if ages.size > 1:
+        between = told & ~at_reading
+        cells[between] = PchipInterpolator(ages, np.asarray(growth.counts, dtype=np.float64))(stated[between])
+    cells[at_reading] = np.asarray(growth.counts, dtype=np.float64)[after[at_reading]]
     return cells

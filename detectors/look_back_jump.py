@@ -36,7 +36,7 @@ def column_jump(jump: JumpPrior | IndependentLevels, grid: LevelGrid) -> ColumnM
     --------
     >>> grid = LevelGrid(np.array([0.5]), np.array([0]), np.array([3]))
     >>> column_jump(JumpPrior(), grid)(np.array([[0.0], [1.0], [0.0]])).round(3).tolist()
-    [[0.328], [0.0], [0.328]]
+    [[0.318], [0.0], [0.318]]
     """
     if isinstance(jump, IndependentLevels):
         density = (jump.density(grid.log_level) * grid.spread(grid.spacing))[:, None]

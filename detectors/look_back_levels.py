@@ -1,5 +1,6 @@
 """The level before and after a shift, taken together."""
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -9,7 +10,7 @@ from scipy import signal
 from detectors.jump_prior import IndependentLevels
 from detectors.jump_step import jump_weights
 from detectors.level_grid import LevelGrid
-from detectors.look_back_passes import NO_CHANCE, Passes
+from detectors.look_back_passes import NO_WEIGHT, Passes
 from detectors.posterior import Quantiles
 from detectors.quantiles import level_quantiles
 
@@ -35,15 +36,15 @@ class Effect:
     effect: Quantiles
 
 
-def effect_within(passes: Passes, first: int, last: int) -> Effect:
-    """The levels on both sides of a shift that lies somewhere in a stretch.
+def effect_at(passes: Passes, dates: Sequence[int]) -> Effect:
+    """The levels on both sides of a shift that lies at one of some dates.
 
     Parameters
     ----------
     passes : Passes
         The record.
-    first, last : int
-        First and last count that may have begun the new level, both at least 1 and included.
+    dates : sequence of int
+        Counts that may have begun the new level, each at least 1.
 
     Returns
     -------
@@ -54,19 +55,18 @@ def effect_within(passes: Passes, first: int, last: int) -> Effect:
     before, after = np.zeros(grid.rows), np.zeros(grid.rows)
     ratios = LevelGrid(grid.spacing, 1 - grid.size, 2 * grid.size - 1)
     ratio = np.zeros(ratios.rows)
-    leaving = np.stack([_leaving(passes, index) for index in range(first, last + 1)])
-    arriving = passes.ahead[first : last + 1]
+    where = np.array(dates)
+    leaving = np.stack([_leaving(passes, index) for index in dates])
+    arriving = np.stack([passes.ahead(index) for index in dates])
     for pair in range(grid.size.size):
         rows = slice(int(grid.start[pair]), int(grid.start[pair] + grid.size[pair]))
         into = slice(int(ratios.start[pair]), int(ratios.start[pair] + ratios.size[pair]))
-        weight = passes.shift[first : last + 1, pair] * passes.pair_weight[pair]
+        weight = passes.shift[where, pair] * passes.pair_weight[pair]
         sources, targets = _joint(passes, pair, leaving[:, rows], arriving[:, rows])
         before[rows] = weight @ _shares(leaving[:, rows] * sources)
         after[rows] = weight @ _shares(arriving[:, rows] * targets)
         ratio[into] = weight @ _shares(_ratios(passes, pair, leaving[:, rows], arriving[:, rows]))
-    return Effect(
-        level_quantiles(grid, before), level_quantiles(grid, after), level_quantiles(ratios, ratio)
-    )
+    return Effect(level_quantiles(grid, before), level_quantiles(grid, after), level_quantiles(ratios, ratio))
 
 
 def _leaving(passes: Passes, index: int) -> FloatArray:
@@ -78,12 +78,12 @@ def _leaving(passes: Passes, index: int) -> FloatArray:
 
 def _shares(weights: FloatArray) -> FloatArray:
     """Each row divided by its sum."""
-    shares: FloatArray = weights / np.maximum(weights.sum(axis=1, keepdims=True), NO_CHANCE)
+    shares: FloatArray = weights / np.maximum(weights.sum(axis=1, keepdims=True), NO_WEIGHT)
     return shares
 
 
 def _jump(passes: Passes, pair: int) -> FloatArray:
-    """Probability of a jump by -(size - 1), ..., size - 1 nodes, in units of its own; 1 where levels are drawn afresh."""
+    """Probability of a jump by -(size - 1), ..., size - 1 nodes; 1 where levels are drawn afresh."""
     jump, grid = passes.chain.model.jump, passes.chain.bench.grid
     size = int(grid.size[pair])
     if isinstance(jump, IndependentLevels):

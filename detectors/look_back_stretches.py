@@ -6,11 +6,12 @@ belong to one shift when they exclude one another: when a second shift between t
 
 import math
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
 
-from detectors.look_back_passes import NO_CHANCE, Passes
+from detectors.look_back_passes import NO_WEIGHT, Passes
 
 FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
@@ -19,7 +20,7 @@ LEAST_PROBABILITY = 0.5
 """A stretch is reported when it holds a shift with at least this probability."""
 PRIOR_SHIFTS = 0.25
 """... and the prior expects at most this many in the part of it that holds so much."""
-SECOND_SHIFT = 0.05
+SECOND_SHIFT = 0.1
 """A stretch is widened as long as fewer shifts than this are expected in it beside the first."""
 NEGLIGIBLE = 0.001
 """A stretch is not widened over a piece that holds less than this."""
@@ -60,11 +61,11 @@ def chance_of_shift(passes: Passes, first: int, last: int) -> float:
     chain, weights = passes.chain, passes.forward[first - 1]
     for index in range(first, last + 1):
         weights = chain.walked(index, weights) @ chain.phases(index).stay
-        weights *= chain.likelihood(index).probability[:, None]
+        weights *= passes.probability[index][:, None]
         weights /= chain.bench.grid.spread(np.exp(passes.log_scale[index]))[:, None]
     without = chain.by_pair(np.einsum("rk,rk->r", weights, passes.backward[last]))
     whole = chain.by_pair(np.einsum("rk,rk->r", passes.forward[last], passes.backward[last]))
-    none = float((without / np.maximum(whole, NO_CHANCE)) @ passes.pair_weight)
+    none = float((without / np.maximum(whole, NO_WEIGHT)) @ passes.pair_weight)
     return min(max(1.0 - none, 0.0), 1.0)
 
 
@@ -116,7 +117,7 @@ def _pieces(probability: FloatArray) -> list[tuple[int, int]]:
         if probability[index] <= probability[index - 1] and probability[index] < probability[index + 1]
     ]
     edges = [1, *(cut + 1 for cut in cuts), probability.size]
-    return [(begin, end - 1) for begin, end in zip(edges, edges[1:], strict=False) if begin < end]
+    return [(begin, end - 1) for begin, end in pairwise(edges) if begin < end]
 
 
 def _widened(

@@ -21,6 +21,8 @@ FloatArray = NDArray[np.float64]
 IntArray = NDArray[np.int64]
 
 REMEMBERED = 8
+MOST_FILLED = 0.05
+LARGEST_LOG = 600.0
 
 
 @dataclass(frozen=True)
@@ -47,6 +49,10 @@ class RecentRuns:
     def divided(self, log_divisor: FloatArray) -> "RecentRuns":
         """After all weights were divided by a number a pair, shape (pairs,)."""
         return RecentRuns(self.numbers, self.counts, self.origin, self.log_scale - log_divisor)
+
+    def forgotten(self, pairs: NDArray[np.bool_]) -> "RecentRuns":
+        """With nothing to fill in for some of the pairs."""
+        return RecentRuns(self.numbers, self.counts, self.origin, np.where(pairs, -np.inf, self.log_scale))
 
     def of_pairs(self, kept: IntArray) -> "RecentRuns":
         """With some of the pairs only."""
@@ -100,7 +106,8 @@ def fill(
     recent: RecentRuns,
     slots: RunSlots,
     run_factor: FloatArray,
-) -> None:
+    pair_total: FloatArray,
+) -> FloatArray:
     """Fill new nodes with the weights of the youngest runs, in place.
 
     Parameters
@@ -117,17 +124,28 @@ def fill(
         Where each run stands.
     run_factor : ndarray, shape (slots,)
         Factor of each run's column.
+    pair_total : ndarray, shape (pairs,)
+        Total of each pair's weights. What is filled in may be a `MOST_FILLED` part of it at most: the grids
+        were laid so that less was left out, and more would be an error of this approximation.
+
+    Returns
+    -------
+    ndarray, shape (pairs,)
+        Total of what was filled in.
 
     Notes
     -----
     The wander since the run began is left out; the run is too young for it to matter at a distance.
     """
     jump = bench.model.jump
+    none = np.zeros(pair_total.size)
     if isinstance(jump, IndependentLevels) or not recent.numbers or not rows.size:
-        return
+        return none
     grid = bench.grid
     pair, level = grid.pair[rows], grid.log_level[rows]
     log_since = np.zeros(rows.size)
+    columns: list[int] = []
+    filled: list[FloatArray] = []
     for index in reversed(range(len(recent.numbers))):
         number = recent.numbers[index]
         log_since += bench.log_likelihood_at(rows, recent.counts[index])
@@ -135,8 +153,15 @@ def fill(
         if place.size != 1 or run_factor[place[0]] <= 0.0:
             continue
         prior = jump.density(level - recent.origin[index, pair]) * grid.spacing[pair]
-        filled = prior * np.exp(np.minimum(log_since + recent.log_scale[index, pair], 600.0))
-        weights[rows, place[0]] = filled / run_factor[place[0]]
+        columns.append(int(place[0]))
+        filled.append(prior * np.exp(np.minimum(log_since + recent.log_scale[index, pair], LARGEST_LOG)))
+    if not columns:
+        return none
+    values = np.stack(filled, axis=1) * run_factor[columns]
+    total = np.bincount(pair, weights=values.sum(axis=1), minlength=pair_total.size)
+    bound = np.minimum(1.0, MOST_FILLED * pair_total / np.maximum(total, 1e-300))
+    weights[np.ix_(rows, np.array(columns))] = values * bound[pair, None] / run_factor[columns]
+    return np.asarray(total * bound)
 
 
 def joined_recent(parts: Sequence[RecentRuns]) -> RecentRuns:

@@ -206,7 +206,10 @@ def _weighed(state: FilterState, likelihood: Likelihood) -> tuple[FilterState, S
     """Weigh runs and pairs by what the count said, and merge old runs."""
     bench, grid = state.bench, state.grid
     by_slot = np.add.reduceat(state.weights, grid.start, axis=0) * state.run_factor
-    total = np.maximum(by_slot.sum(axis=1), NO_CHANCE)
+    summed = by_slot.sum(axis=1)
+    if summed.min() < NO_CHANCE:
+        state = replace(state, recent=state.recent.forgotten(summed < NO_CHANCE))
+    total = np.maximum(summed, NO_CHANCE)
     log_weight = state.log_weight + np.log(total)
     top = np.maximum.reduceat(log_weight, bench.first_pair)
     relative = np.exp(log_weight - bench.over_pairs(top))

@@ -8,9 +8,13 @@ from dataclasses import dataclass
 from detectors.errors import UnusableObservation, UnusableParameter
 
 LONGEST_SPAN = 3.0
-"""Readings further apart than this many intervals tell no count: a shift in between would be averaged away."""
+"""Readings further apart than this many intervals tell no count: it would hide a shift in between."""
 LEAST_COVERED = 0.5
 """An interval of which less than this share is covered by readings has no count."""
+
+
+MOST_INTERVALS = 1_000_000
+"""Most intervals from the first count to the last."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,8 +55,8 @@ class Increment:
     count : int or None
         Sum of the rises of the total in it; None when it is missing.
     exposure : float
-        Intervals' worth of time in which these rises were seen: near 1, less in an interval that is covered in
-        part, up to the longest span in one that stands for its neighbours too; 0 when missing.
+        Intervals' worth of time in which these rises were seen: near 1, less in an interval that is covered
+        in part, up to the longest span in one that stands for its neighbours too; 0 when missing.
     covers_from, covers_to : float
         First and last place on the axis that the count covers, for weighing a recurring pattern.
     """
@@ -166,7 +170,7 @@ def increments(
     Raises
     ------
     UnusableObservation
-        If the readings do not ascend.
+        If the readings do not ascend, or reach over more than `MOST_INTERVALS` intervals.
     UnusableParameter
         If a parameter cannot be.
 
@@ -176,13 +180,13 @@ def increments(
     interpolated, so counts stay whole numbers. Where readings span several intervals the one in the middle
     gets the rise with the exposure of all, its neighbours are missing. (The negative binomial of such a sum
     then has a variance that is too large, which is the safe side.) A fall is listed, and the time between
-    its two readings tells no count; what the interval's other readings tell stands. After a fall counting goes
-    on from the lower total. A total restated upwards cannot be told from a rise.
+    its two readings tells no count; what the interval's other readings tell stands. After a fall counting
+    goes on from the lower total. A total restated upwards cannot be told from a rise.
 
     Examples
     --------
-    >>> week = [TotalReading(*reading) for reading in [(0, 100), (1, 130), (2, 120), (3, 155), (5, 215)]]
-    >>> told = increments(week)
+    >>> read = [(0.0, 100), (1.0, 130), (2.0, 120), (3.0, 155), (5.0, 215)]
+    >>> told = increments([TotalReading(at, total) for at, total in read])
     >>> [(day.position, day.count, day.exposure) for day in told.counts]
     [(0, 30, 1.0), (1, None, 0.0), (2, 35, 1.0), (3, None, 0.0), (4, 60, 2.0)]
     >>> told.fallen[0].size
@@ -219,7 +223,9 @@ def _steps(
     readings: Sequence[TotalReading], longest_span: float
 ) -> tuple[list[_Rise], list[FallenTotal], list[_Rise]]:
     """Rises that can be placed, falls, and rises over too long a time."""
-    rises, fallen, too_long = [], [], []
+    rises: list[_Rise] = []
+    fallen: list[FallenTotal] = []
+    too_long: list[_Rise] = []
     for before, after in itertools.pairwise(readings):
         if after.total < before.total:
             position = math.floor(after.at)
@@ -243,6 +249,8 @@ def _sum(position: int, rises: Sequence[_Rise]) -> Increment:
 def _without_holes(told: dict[int, Increment]) -> tuple[Increment, ...]:
     if not told:
         return ()
+    if max(told) - min(told) >= MOST_INTERVALS:
+        raise UnusableObservation("at", max(told), f"within {MOST_INTERVALS} intervals of the first count")
     return tuple(
         told.get(position, Increment(position, None, 0.0, float(position), position + 1.0))
         for position in range(min(told), max(told) + 1)

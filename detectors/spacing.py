@@ -14,7 +14,10 @@ LOG_LEVEL_RANGE = 46.0
 
 STILL_PER_SD = 1.8
 WANDERING_PER_SD = 0.8
-MOST_NODES = 1024
+PER_WANDER = 0.25
+"""Where one step of the walk is far wider than a count is uncertain, finer grids than this add nothing: the level
+follows each count, and what the next one is expected to be hangs on the step (see `resolvable_dispersion`)."""
+MOST_NODES = 512
 FEWEST_NODES = 8
 WIDEST_REACH = 8.0
 
@@ -49,8 +52,9 @@ def widest_spacing(variance: FloatArray, wander: FloatArray, longest_run: int | 
     """
     still = np.sqrt(variance / np.maximum(longest_run, 1)) * STILL_PER_SD
     w2 = wander * wander
-    steady = (np.sqrt(w2 * w2 + 4.0 * w2 * variance) - w2) / 2.0
-    wandering = np.sqrt(steady) * WANDERING_PER_SD
+    # (sqrt(w^4 + 4 w^2 v) - w^2) / 2, written without the difference.
+    steady = 2.0 * w2 * variance / np.maximum(np.sqrt(w2 * w2 + 4.0 * w2 * variance) + w2, 1e-300)
+    wandering = np.maximum(np.sqrt(steady) * WANDERING_PER_SD, wander * PER_WANDER)
     return np.where(wander > 0.0, wandering, still)
 
 

@@ -79,7 +79,7 @@ def _schedule(bench: Bench, wired: Wired, deliverer: Deliverer) -> Schedule:
     for plan in wired.rounds:
         one_at_a_time = threading.Lock()
         backlog = _backlog(bench, plan, deliverer, one_at_a_time)
-        schedule.add_once(f"backlog of {plan.name}", backlog)
+        schedule.add_once(backlog)
         action = _one_pass(bench, plan, wired.good_rounds, deliverer, one_at_a_time)
         every = bench.clock.real_seconds(plan.every)
         schedule.add(Job(plan.name, action, every, _wait_seconds(bench.store, plan, bench.clock)))

@@ -27,10 +27,14 @@ class UnknownSource(ValueError):
 
 @dataclass(frozen=True, slots=True)
 class Polled:
-    """The rounds that were made, and what became of the deliveries that were due."""
+    """The rounds that were made, and what became of the deliveries that were due.
+
+    `unfolded` is how many streams could not be folded; the rounds say why.
+    """
 
     rounds: tuple[Round, ...]
     deliveries: Counts
+    unfolded: int
 
 
 def poll_once(settings: Path, sources: Sequence[str]) -> Polled:
@@ -47,10 +51,11 @@ def poll_once(settings: Path, sources: Sequence[str]) -> Polled:
     with open_store(wired.database) as store:
         upgrade(store)
         bench = Bench(store, clock, wired.takers, stop)
-        done = [pass_for(bench, plan).round.round_id for plan in plans]
+        done = [pass_for(bench, plan) for plan in plans]
         deliveries = deliver_due(store, wired.outlets, clock, random.random)
         with store.reading() as conn:
-            return Polled(tuple(get_round(conn, round_id) for round_id in done), deliveries)
+            rounds = tuple(get_round(conn, one.round.round_id) for one in done)
+    return Polled(rounds, deliveries, sum(len(one.trouble) for one in done))
 
 
 def _named(wired: Wired, name: str) -> RoundPlan:

@@ -3,6 +3,7 @@
 import datetime
 import threading
 from collections.abc import Callable
+from concurrent import futures
 from dataclasses import dataclass
 
 from apscheduler.executors.pool import ThreadPoolExecutor  # type: ignore[import-untyped]
@@ -38,6 +39,9 @@ class Schedule:
             # By default a run late by over one second would be skipped.
             job_defaults={"misfire_grace_time": None, "coalesce": True, "max_instances": 1},
         )
+        # Not jobs of the scheduler: its thread dies of one that is done in the moment in which it is stopped.
+        self._once: list[Action] = []
+        self._pool_of_once = futures.ThreadPoolExecutor(MOST_AT_ONCE, "once")
         self._running = 0
         self._change = threading.Condition()
 
@@ -55,16 +59,19 @@ class Schedule:
             self._counted(job.action), trigger, id=job.name, name=job.name, next_run_time=first
         )
 
-    def add_once(self, name: str, action: Action) -> None:
+    def add_once(self, action: Action) -> None:
         """Plan something to be done once, as soon as there is a thread for it."""
-        self._scheduler.add_job(self._counted(action), id=name, name=name)
+        self._once.append(self._counted(action))
 
     def start(self) -> None:
         """Begin."""
+        for action in self._once:
+            self._pool_of_once.submit(action)
         self._scheduler.start()
 
     def stop(self, within_seconds: float) -> bool:
         """Plan nothing further and wait for what is under way; whether all of it ended within the bound."""
+        self._pool_of_once.shutdown(wait=False, cancel_futures=True)
         if self._scheduler.running:
             self._scheduler.shutdown(wait=False)
         with self._change:

@@ -14,11 +14,11 @@ from config.loading import load_settings
 from config.secret import Secret, reveal
 from config.settings import Settings
 from config.streams import Calendar, StreamSettings, fingerprint, stream_settings
-from detectors.accuracy import Accuracy
 from detectors.gap_prior import GapPrior
 from detectors.judge import Rule, prior_floor
 from detectors.jump_prior import JumpPrior
 from detectors.model import DISPERSIONS, MODEL_VERSION, WANDERS, Model
+from service.accuracy import accuracy_for
 from service.clock import SystemClock
 from service.logs import Form, hide
 from service.outlets.outlet import Outlet
@@ -128,14 +128,13 @@ def rule_of(judgement: Judgement) -> Rule:
 
 def model_of(model: WrittenModel, judgement: Judgement) -> Model:
     """The model that the settings describe; runs within the window are kept one by one."""
-    plain = Accuracy()
     return Model(
         gap=GapPrior(model.gap_shape, model.mean_gap),
         one_off_share=model.one_off_share,
         jump=JumpPrior(smallest=math.log1p(model.smallest_shift)),
         dispersions=model.dispersions or DISPERSIONS,
         wanders=model.wanders or WANDERS,
-        accuracy=Accuracy(exact_run_length=max(judgement.window, plain.exact_run_length)),
+        accuracy=accuracy_for(judgement.window),
     )
 
 

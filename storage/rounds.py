@@ -112,11 +112,16 @@ def list_rounds(conn: Connection, *, source: str | None = None, limit: int = 50)
     return tuple(_round(row._mapping) for row in conn.execute(query))
 
 
-def last_good_round(conn: Connection, source: str) -> Round | None:
-    """The newest round that reached the source, whether or not it found anything new."""
+def good_rounds(conn: Connection, source: str, *, limit: int) -> tuple[Round, ...]:
+    """The newest rounds that reached the source, whether or not they found anything new, newest first."""
     good = select(rounds).where(rounds.c.source == source, rounds.c.outcome.in_((GOOD, NOTHING_NEW)))
-    row = conn.execute(good.order_by(rounds.c.id.desc()).limit(1)).first()
-    return None if row is None else _round(row._mapping)
+    return tuple(_round(row._mapping) for row in conn.execute(good.order_by(rounds.c.id.desc()).limit(limit)))
+
+
+def last_good_round(conn: Connection, source: str) -> Round | None:
+    """The newest round that reached the source."""
+    found = good_rounds(conn, source, limit=1)
+    return found[0] if found else None
 
 
 def last_good_rounds(conn: Connection) -> dict[str, Round]:

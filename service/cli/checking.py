@@ -1,16 +1,20 @@
 """Whether settings can be used, for people and for machines."""
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
 import click
 
 from config.errors import Fault, SettingsFaults
+from config.secret import reveal
 from config.settings import Settings
+from config.sources import SqlSource
 from service.cli.opening import settings_with_secrets
 from service.cli.options import Given
 from service.cli.show import say, show_json
-from service.wiring import require_usable_thresholds
+from service.sources.sql_engine import enforces_deadline, enforces_read_only
+from service.wiring import UnusableThreshold, require_usable_thresholds
 
 
 @dataclass(frozen=True, slots=True)
@@ -25,7 +29,9 @@ class Checked:
     @property
     def warnings(self) -> tuple[str, ...]:
         """What is odd, though it can be used."""
-        return () if self.settings is None else self.settings.warnings
+        if self.settings is None:
+            return ()
+        return (*self.settings.warnings, *_trusted_queries(self.settings))
 
 
 def check(given: Given) -> Checked:
@@ -36,6 +42,14 @@ def check(given: Given) -> Checked:
         return Checked(given.settings, settings, (), "")
     except SettingsFaults as error:
         return Checked(given.settings, None, error.faults, str(error))
+    except UnusableThreshold as error:
+        fault = Fault(
+            given.settings,
+            f"{error.where} . judgement . threshold",
+            str(error.threshold),
+            f"a threshold above {error.floor:.3f}",
+        )
+        return Checked(given.settings, None, (fault,), str(error))
 
 
 def show_checked(checked: Checked, as_json: bool) -> None:
@@ -48,6 +62,21 @@ def show_checked(checked: Checked, as_json: bool) -> None:
         for warning in checked.warnings:
             say(f"Note: {warning}")
         say(_good(checked.place, checked.settings))
+
+
+def _trusted_queries(settings: Settings) -> Iterator[str]:
+    """Queries of which the database itself does not see to it that they only read, or end in time."""
+    for source in settings.sources:
+        if not isinstance(source, SqlSource):
+            continue
+        address = reveal(source.address)
+        if not enforces_read_only(address):
+            yield (
+                f'Source "{source.name}": this kind of database does not keep the query from writing; what '
+                "it writes is rolled back. Give it a login that may only read."
+            )
+        if not enforces_deadline(address):
+            yield f'Source "{source.name}": its driver does not end a query that hangs at the deadline.'
 
 
 def _good(place: Path, settings: Settings) -> str:

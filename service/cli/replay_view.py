@@ -4,6 +4,7 @@ from detectors.posterior import Quantiles
 from service.cli.figures import LEVEL_COLUMN, probability_text, quantiles_text
 from service.cli.show import Cell, blocks, say, show_table, width
 from service.cli.sparkline import sparkline
+from service.replay.looking_back_words import look_back_sentences
 from service.replay.report import ObservationLine, Report
 from service.replay.words import CAUTION, alert_sentence, summary_sentence, too_short_sentence
 
@@ -25,7 +26,9 @@ def show_report(report: Report) -> None:
         say(alert_sentence(alert, report))
     for line in report.kept_out:
         say(f"Row {line.index} was kept out: {line.why}")
-    if report.alerts:
+    for sentence in look_back_sentences(report):
+        say(sentence)
+    if report.alerts or report.lookback is not None:
         say(CAUTION)
     say("")
     say(sparkline([line.count for line in report.observations], width(), blocks()))

@@ -10,6 +10,7 @@ from detectors.gap_prior import GapPrior
 from detectors.judge import Rule
 from detectors.jump_prior import JumpPrior
 from detectors.model import Model
+from service.accuracy import accuracy_for
 
 POISSON = "poisson"
 
@@ -49,6 +50,7 @@ def model_for(wish: Wish) -> Model:
         one_off_share=_or(wish.one_off_share, plain.one_off_share),
         wanders=_or(wish.wanders, plain.wanders),
         dispersions=_or(wish.dispersions, plain.dispersions),
+        accuracy=accuracy_for(_or(wish.window, Rule().window)),
     )
 
 

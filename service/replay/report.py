@@ -5,6 +5,7 @@ from dataclasses import dataclass
 from detectors.judge import Rule
 from detectors.model import Model
 from detectors.posterior import Announcement, Posterior, Quantiles
+from service.replay.looking_back import LookBackLines
 from service.replay.run import Replayed, indices
 from service.replay.table import Entry, Table
 from service.sources.document import KeptOut
@@ -49,7 +50,11 @@ class KeptOutLine:
 
 @dataclass(frozen=True, slots=True)
 class Report:
-    """The whole answer. `interval` is None where the rows are releases without a common spacing."""
+    """The whole answer. `interval` is None where the rows are releases without a common spacing.
+
+    Observations and alerts hold filtered figures, as they would have been said at the time; `lookback`, where
+    it was asked for, what all counts together say.
+    """
 
     shape: str
     interval: str | None
@@ -59,10 +64,17 @@ class Report:
     log_evidence: float
     judgement: dict[str, object]
     model: dict[str, object]
+    lookback: LookBackLines | None
 
 
 def report(
-    table: Table, shape: str, interval: str | None, replayed: Replayed, model: Model, rule: Rule
+    table: Table,
+    shape: str,
+    interval: str | None,
+    replayed: Replayed,
+    lookback: LookBackLines | None,
+    model: Model,
+    rule: Rule,
 ) -> Report:
     """The answer to a replay, its observations in the order of the file."""
     said = {one.index: posterior for one, posterior in zip(replayed.placed, replayed.posteriors, strict=True)}
@@ -78,6 +90,7 @@ def report(
         sum(posterior.log_predictive for posterior in replayed.posteriors if posterior is not None),
         _judgement(rule),
         _model(model),
+        lookback,
     )
 
 

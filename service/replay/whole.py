@@ -5,15 +5,22 @@ from collections.abc import Callable
 from detectors.judge import Rule
 from detectors.model import Model
 from service.replay.axis import Spacing, put_on_axis
+from service.replay.looking_back import Looking, not_looking
 from service.replay.report import Report, report
 from service.replay.run import replay
 from service.replay.table import Table
 
 
 def replay_table(
-    table: Table, spacing: Spacing, model: Model, rule: Rule, *, step: Callable[[int], None]
+    table: Table,
+    spacing: Spacing,
+    model: Model,
+    rule: Rule,
+    *,
+    step: Callable[[int], None],
+    looking: Looking = not_looking,
 ) -> Report:
-    """Replay a table; `step` is told of each row folded.
+    """Replay a table; `step` is told of each row folded, and `looking` is how to look back afterwards.
 
     Raises
     ------
@@ -22,4 +29,6 @@ def replay_table(
     """
     axis = put_on_axis(table, spacing)
     interval = None if axis.interval is None else str(axis.interval)
-    return report(table, axis.shape, interval, replay(axis.placed, model, rule, step=step), model, rule)
+    replayed = replay(axis.placed, model, rule, step=step)
+    lookback = looking(axis.placed, table.rows, model)
+    return report(table, axis.shape, interval, replayed, lookback, model, rule)

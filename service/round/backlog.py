@@ -20,7 +20,7 @@ from service.round.plans import CalendarShape, RoundPlan
 from storage.engine import Store
 from storage.errors import StoreError
 from storage.readings import newest_readings
-from storage.rounds import last_good_round, list_rounds
+from storage.rounds import good_rounds
 from storage.shifts import Shift
 
 ROUNDS_LOOKED_AT = 50
@@ -62,12 +62,12 @@ def bring_up_source(store: Store, plan: RoundPlan, clock: Clock, stop: threading
 
 
 def timing_of(store: Store, plan: RoundPlan, now: datetime.datetime) -> Timing:
-    """How far the source's counts reach by now, and when it was read and was not, though it should have been."""
+    """How far the source's counts reach by now, when it was last read, and when it should have been."""
     with store.reading() as conn:
         reaches = _reaches(conn, plan, now)
-        rounds = list_rounds(conn, source=plan.name, limit=ROUNDS_LOOKED_AT)
-        last = last_good_round(conn, plan.name)
-    return Timing(reaches, downtimes(rounds, plan.every, now), NEVER if last is None else last.started_utc)
+        rounds = good_rounds(conn, plan.name, limit=ROUNDS_LOOKED_AT)
+    read = rounds[0].started_utc if rounds else NEVER
+    return Timing(reaches, downtimes(rounds, plan.every, now), read)
 
 
 def _reaches(

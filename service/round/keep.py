@@ -1,17 +1,17 @@
 """Stores what a document said, all of it in one short transaction, before anything computes on it."""
 
 import datetime
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 
 from sqlalchemy import Connection
 
-from service.round.keys import sort_rows
+from service.round.keys import sort_rows, unknown_counts
 from service.round.kinds import require_same_kind
 from service.round.plans import CalendarShape, RoundPlan, StreamPlan, shape_word
 from service.round.ripen import keep_releases
 from service.sources.document import Document, KeptOut
-from storage.readings import Kept, NewReading, keep_readings
+from storage.readings import Kept, NewReading, keep_readings, newest_readings
 from storage.rounds import KeptOutRow, RoundCounts, note_counts
 from storage.streams import SeenStream, list_streams, see_streams
 from storage.validators import Validators, keep_validators
@@ -47,11 +47,14 @@ def keep(
     named = {stream.id for stream, _ in sorted_rows.by_stream}
     # Of a stream that the document does not name, all that is known is absent now.
     unnamed = [(stream, ()) for stream in planned_streams(conn, plan) if stream.id not in named]
+    kept_out = (*document.kept_out, *sorted_rows.kept_out)
+    unknown = unknown_counts(kept_out, plan, now)
     kept = [
-        _keep_stream(conn, stream, rows, round_id, now) for stream, rows in (*sorted_rows.by_stream, *unnamed)
+        _keep_stream(conn, stream, (*rows, *_new_unknown(conn, stream, rows, unknown)), round_id, now)
+        for stream, rows in (*sorted_rows.by_stream, *unnamed)
     ]
     used = sum(len(rows) for _, rows in sorted_rows.by_stream)
-    counts = _counts(kept, used, (*document.kept_out, *sorted_rows.kept_out))
+    counts = _counts(kept, used, kept_out)
     note_counts(conn, round_id, counts)
     keep_validators(conn, plan.name, _validators(plan, document, counts), now=now)
     return KeptDocument(counts, new, sorted_rows.left_out)
@@ -61,6 +64,19 @@ def planned_streams(conn: Connection, plan: RoundPlan) -> tuple[StreamPlan, ...]
     """The source's stored streams as the settings now describe them, without those they leave out."""
     planned = (plan.stream_for(stream.split) for stream in list_streams(conn, source=plan.name))
     return tuple({stream.id: stream for stream in planned if stream is not None}.values())
+
+
+def _new_unknown(
+    conn: Connection,
+    stream: StreamPlan,
+    rows: Sequence[NewReading],
+    unknown: Mapping[str, Sequence[NewReading]],
+) -> list[NewReading]:
+    """The unknown counts of which nothing is known so far: what is known stays as it is."""
+    if stream.id not in unknown:
+        return []
+    known = {row.key for row in rows} | {reading.key for reading in newest_readings(conn, stream.id)}
+    return [one for one in unknown[stream.id] if one.key not in known]
 
 
 def _keep_stream(

@@ -3,7 +3,7 @@
 import datetime
 from collections import defaultdict
 from collections.abc import Iterable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from service.round.calendar import at_of, end_of, key_of, position_of
 from service.round.plans import CalendarShape, ReleaseShape, RoundPlan, StreamPlan
@@ -48,6 +48,19 @@ def sort_rows(rows: Iterable[Row], plan: RoundPlan, now: datetime.datetime) -> S
         sifted.kept_out,
         len(given) - len(wanted),
     )
+
+
+def unknown_counts(
+    kept_out: Iterable[KeptOut], plan: RoundPlan, now: datetime.datetime
+) -> dict[str, tuple[NewReading, ...]]:
+    """By stream the counts that nobody knows, as their rows were kept out, where no row would mean zero."""
+    found: dict[str, dict[str, NewReading]] = defaultdict(dict)
+    for row in (one.place for one in kept_out if one.place is not None):
+        stream = plan.stream_for(row.split)
+        if stream is not None and isinstance(stream.shape, CalendarShape) and stream.shape.absent == "zero":
+            unknown = _reading(replace(row, exposure=None, title=None), stream, now)
+            found[stream.id][unknown.key] = unknown
+    return {stream_id: tuple(by_key.values()) for stream_id, by_key in found.items()}
 
 
 def key_of_row(row: Row, stream: StreamPlan) -> str:

@@ -26,7 +26,8 @@ def downtimes(
 ) -> tuple[Downtime, ...]:
     """The stretches without a good round in which rounds were missed.
 
-    `rounds` are the source's newest rounds, newest first. The stretch up to now counts too: what was read
+    `rounds` are the source's newest rounds, newest first, of which those that did not reach it say nothing:
+    a source that was down for a month has many. The stretch up to now counts too: what was read
     before a crash may be folded only after it.
     """
     limit = every * ROUNDS_MISSED

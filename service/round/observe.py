@@ -67,7 +67,8 @@ class TooManyAbsent(UnusableReadings):
     def __init__(self, stream_id: str, absent: int) -> None:
         super().__init__(
             f"Stream {stream_id!r} has {absent} absent intervals, more than {MOST_FILLED}: its dates or its "
-            "interval must be wrong. Correct the source or the setting `interval`."
+            "interval must be wrong. Correct the source or the setting `interval`; as what was stored stays, "
+            "rename the source too if it had a wrong date, so that its streams begin anew."
         )
 
 

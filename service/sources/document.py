@@ -19,11 +19,15 @@ class Row:
 
 @dataclass(frozen=True, slots=True)
 class KeptOut:
-    """A row that was not used: its number (the first row of data is 1), why, and its text, cut short."""
+    """A row that was not used: its number (the first row of data is 1), why, and its text, cut short.
+
+    `place` is the row without its count, where it can be read whose it is and of when.
+    """
 
     row: int
     why: str
     text: str
+    place: Row | None = field(default=None, compare=False, repr=False)
 
 
 @dataclass(frozen=True, slots=True)

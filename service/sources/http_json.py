@@ -4,7 +4,6 @@ import json
 from collections.abc import Iterator
 from dataclasses import replace
 from decimal import Decimal
-from typing import NoReturn
 
 from service.http_client import Answer, Deadline, Fetch, FetchError, Monotonic, Session, join, same_origin
 from service.sources.document import Document, KeptOut, Row, Validators
@@ -87,7 +86,8 @@ def _fetched(plan: JsonPlan, session: Session, request: Fetch, largest_body: int
 
 def _parsed(plan: JsonPlan, body: bytes, number: int) -> object:
     try:
-        return json.loads(body, parse_constant=_refuse, parse_int=_integer)
+        # NaN and Infinity are no JSON, but programs write them: they cost their row, not the document.
+        return json.loads(body, parse_int=_integer)
     except RecursionError:
         why = "is nested too deeply"
     except UnicodeDecodeError:
@@ -95,10 +95,6 @@ def _parsed(plan: JsonPlan, body: bytes, number: int) -> object:
     except ValueError as error:
         why = f"is no JSON ({error})" if body.strip() else "is empty where JSON was expected"
     raise _unreadable(plan, f"page {number} of its answer {why}.")
-
-
-def _refuse(constant: str) -> NoReturn:
-    raise ValueError(f"{constant} is no number of JSON")
 
 
 def _integer(digits: str) -> int | Decimal:

@@ -2,7 +2,7 @@
 
 from collections import defaultdict
 from collections.abc import Callable, Hashable, Iterable, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from zoneinfo import ZoneInfo
 
 from service.sources.document import KeptOut, Row
@@ -48,7 +48,7 @@ def understand(values: Mapping[str, object], number: int, rules: RowRules) -> Ro
     except UnusableValue as error:
         # Secrets go before anything is cut: half of one would no longer be known as one.
         hidden = UnusableValue(error.name, error.needed, hide_in(error.got, rules.secrets))
-        return keep_out(values, number, str(hidden), rules)
+        return replace(keep_out(values, number, str(hidden), rules), place=_place(values, number, rules))
 
 
 def keep_out(values: Mapping[str, object], number: int, why: str, rules: RowRules) -> KeptOut:
@@ -81,7 +81,7 @@ def keep_out_conflicts(rows: Iterable[Row], key_of: Callable[[Row], Hashable]) -
         by_key[key_of(row)].append(row)
     used = [group[0] for group in by_key.values() if len({_value(row) for row in group}) == 1]
     out = [
-        KeptOut(row.number, _conflict(row, group), cut(_text(_fields(row))))
+        KeptOut(row.number, _conflict(row, group), cut(_text(_fields(row))), replace(row, count=None))
         for group in by_key.values()
         if len({_value(row) for row in group}) > 1
         for row in group
@@ -89,6 +89,13 @@ def keep_out_conflicts(rows: Iterable[Row], key_of: Callable[[Row], Hashable]) -
     return Sifted(
         tuple(sorted(used, key=lambda row: row.number)), tuple(sorted(out, key=lambda one: one.row))
     )
+
+
+def _place(values: Mapping[str, object], number: int, rules: RowRules) -> Row | None:
+    try:
+        return Row(_identity(values, "split"), read_at(values["at"], rules.zone), None, number=number)
+    except UnusableValue:
+        return None
 
 
 def _identity(values: Mapping[str, object], name: str) -> str | None:

@@ -1,7 +1,7 @@
 """The judge's rule applied afterwards, at any threshold, to recorded run-length posteriors of simulated streams.
 
 A filter's posterior does not depend on the threshold, so each stream is folded once and judged many times.
-`tests/benchmarks/test_alarms.py` holds this against the judge itself.
+`tests/benchmarks/test_small_versions.py` holds this against the judge itself.
 """
 
 from dataclasses import dataclass

@@ -38,7 +38,8 @@ ONE_FAULT = {
     ),
     "unknown key unlike any": (
         "[service]\nqqq = 1\n" + GOOD,
-        FILE + "service . qqq: needed one of the keys database, good_rounds_address, stop_within, zone; "
+        FILE
+        + "service . qqq: needed one of the keys database, good_rounds_address, log_form, log_level, stop_within, zone; "
         "got an unknown key.",
     ),
     "wrong type": (

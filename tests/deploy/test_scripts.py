@@ -10,7 +10,7 @@ from packaging.requirements import Requirement
 from packaging.utils import canonicalize_name
 
 ROOT = Path(__file__).parents[2]
-SCRIPTS = ("deploy/try", "deploy/test", "deploy/check", ".ci/run")
+SCRIPTS = ("deploy/try", "deploy/test", "deploy/check", "deploy/prove", ".ci/run")
 
 
 @pytest.mark.parametrize("name", SCRIPTS)

@@ -4,15 +4,16 @@ Run from the root:   PYTHONPATH=tests/benchmarks .venv/bin/python tests/document
 """
 
 import sys
-from concurrent.futures import ProcessPoolExecutor
+from concurrent.futures import Executor, ProcessPoolExecutor
 
 from alarms import Recorded, alarms
 from detection import AFTER, FLAT_COUNTS, GROUP, WITHIN, Share, recorded
+
 from detectors.judge import Rule
 from detectors.model import Model
 
 
-def folded(kind: str, streams: int, pool: ProcessPoolExecutor) -> list[Recorded]:
+def folded(kind: str, streams: int, pool: Executor) -> list[Recorded]:
     """The recorded posteriors of so many series of a kind, under the default model."""
     groups = [range(first, min(first + GROUP, streams)) for first in range(0, streams, GROUP)]
     parts = pool.map(recorded, [(Model(), kind, seeds, Rule().window) for seeds in groups])
@@ -22,7 +23,9 @@ def folded(kind: str, streams: int, pool: ProcessPoolExecutor) -> list[Recorded]
 def found(fallen: list[Recorded], rule: Rule, before: int, within: int) -> Share:
     """In how many streams the fall is told within so many counts."""
     rung = [alarms(stream, rule) for stream in fallen]
-    return Share(sum(any(before <= place < before + within for place in places) for places in rung), len(rung))
+    return Share(
+        sum(any(before <= place < before + within for place in places) for places in rung), len(rung)
+    )
 
 
 def main(streams: int) -> str:

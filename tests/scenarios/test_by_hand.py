@@ -4,6 +4,8 @@ from pathlib import Path
 
 import pytest
 
+from service.cli.main import run_command
+from service.exit_codes import Exit
 from service.poll import UnknownSource, poll_once
 from service.rebuild import Rebuilt, rebuild_stream
 from storage.engine import open_store
@@ -63,6 +65,18 @@ def test_polling_by_hand(settings: Path) -> None:
     assert "nonesuch.csv" in (letters.message or "")
     (again,) = poll_once(settings, ["plays"]).rounds
     assert (again.outcome, again.rows_used) == (NOTHING_NEW, 0)
+
+
+def test_polling_says_that_a_stream_could_not_be_folded(settings: Path, tmp_path: Path) -> None:
+    (tmp_path / "plays.csv").write_text("day,show,plays\n1001-01-01,quay,5\n", encoding="utf-8")
+    settings.write_text(SETTINGS.replace('interval = "week"', 'interval = "day"'), encoding="utf-8")
+    assert poll_once(settings, ["plays"]).unfolded == 0
+    with (tmp_path / "plays.csv").open("a", encoding="utf-8") as file:
+        file.write("2026-01-01,quay,6\n")
+    polled = poll_once(settings, ["plays"])
+    assert polled.unfolded == 1
+    assert "absent intervals" in (polled.rounds[0].message or "")
+    assert run_command(["--settings", str(settings), "poll", "plays"]) == Exit.TROUBLE
 
 
 def test_a_source_that_is_not_there(settings: Path, tmp_path: Path) -> None:

@@ -129,9 +129,18 @@ def test_a_level_is_kept_to(lines: io.StringIO) -> None:
 def test_other_packages_are_heard_from_warnings_on(lines: io.StringIO) -> None:
     configure("words", "debug", stream=lines)
     logging.getLogger("httpx").info("HTTP Request: GET %s", ADDRESS)
-    logging.getLogger("apscheduler.executors").warning("Run time of job was %s", "missed")
+    logging.getLogger("alembic.runtime").warning("Revision %s is odd", "0001")
+    assert (
+        without_instant(lines.getvalue()) == 'level=warning event="Revision 0001 is odd" by=alembic.runtime'
+    )
+
+
+def test_the_scheduler_is_heard_from_errors_on(lines: io.StringIO) -> None:
+    configure("words", "debug", stream=lines)
+    logging.getLogger("apscheduler.scheduler").warning("maximum number of running instances reached")
+    logging.getLogger("apscheduler.executors").error("Job %s raised", "plays")
     assert without_instant(lines.getvalue()) == (
-        'level=warning event="Run time of job was missed" by=apscheduler.executors'
+        'level=error event="Job plays raised" by=apscheduler.executors'
     )
 
 

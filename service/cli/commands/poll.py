@@ -13,8 +13,8 @@ from service.cli.options import Given, json_option, settings_option
 def command(ctx: click.Context, sources: tuple[str, ...], as_json: bool) -> None:
     """One round now for each SOURCE, or for all: read, keep, advance, record, tell, deliver; then end.
 
-    May be used beside a running daemon. Leaves with 4 if a source could not be read, else with 7 if a delivery
-    that was due did not arrive.
+    May be used beside a running daemon. Leaves with 4 if a source could not be read, else with 1 if a stream
+    could not be folded, else with 7 if a delivery that was due did not arrive.
     """
     from service.cli.rounds_view import show_polled
     from service.cli.show import show_json
@@ -33,5 +33,7 @@ def command(ctx: click.Context, sources: tuple[str, ...], as_json: bool) -> None
         show_polled(polled.rounds)
     if any(one.outcome == FAILED for one in polled.rounds):
         ctx.exit(Exit.UNREADABLE)
+    if polled.unfolded:
+        ctx.exit(Exit.TROUBLE)
     if polled.deliveries.put_off or polled.deliveries.given_up:
         ctx.exit(Exit.NOT_DELIVERED)

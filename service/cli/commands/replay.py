@@ -29,6 +29,12 @@ from service.cli.options import json_option
 @click.option("--one-off-share", type=float, help="Share of counts that are one-offs, from 0 to below 1.")
 @click.option("--wander", help='Values of the wander with prior weights: "0" or "0.005:1,0.01:0.5".')
 @click.option("--dispersion", help='Values of the dispersion: "4,8,16"; "poisson" stands for infinity.')
+@click.option(
+    "--look-back",
+    is_flag=True,
+    help="Also say what all counts together show: each shift with its date region and effect. "
+    "With --json this is there without asking, up to 1000 rows.",
+)
 def command(
     file: Path,
     as_json: bool,
@@ -44,6 +50,7 @@ def command(
     one_off_share: float | None,
     wander: str | None,
     dispersion: str | None,
+    look_back: bool,
 ) -> None:
     """Run the counts of FILE (- for standard input) through the detector, as if they arrived one at a time.
 
@@ -57,6 +64,7 @@ def command(
     from service.cli.show import progress, show_json
     from service.replay.axis import Spacing
     from service.replay.given import file_given
+    from service.replay.looking_back import looked_back, looking_if_quick, not_looking
     from service.replay.parameters import Wish, model_for, read_dispersions, read_wanders, read_zone, rule_for
     from service.replay.table import read_table
     from service.replay.whole import replay_table
@@ -77,8 +85,10 @@ def command(
     spacing = Spacing(interval, None if zone is None else read_zone(zone))
     with file_given(file) as place:
         table = read_table(place, spacing.zone, monotonic)
+    unasked = looking_if_quick if as_json else not_looking
+    looking = looked_back if look_back else unasked
     with progress("Replaying", len(table.entries)) as step:
-        answer = replay_table(table, spacing, model, rule, step=step)
+        answer = replay_table(table, spacing, model, rule, step=step, looking=looking)
     if as_json:
         show_json(answer)
     else:

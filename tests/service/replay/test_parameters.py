@@ -25,6 +25,11 @@ def test_wishes_are_put_in() -> None:
     assert rule_for(Wish(threshold=0.5, lasting=1)) == Rule(threshold=0.5, lasting=1)
 
 
+def test_a_window_beyond_the_usual_one_is_computed_exactly() -> None:
+    wish = Wish(window=90)
+    assert model_for(wish).accuracy.exact_run_length == rule_for(wish).window == 90
+
+
 @pytest.mark.parametrize(
     ("text", "wanders"),
     [

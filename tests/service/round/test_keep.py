@@ -11,7 +11,7 @@ from service.round.plans import ReleaseShape, RoundPlan
 from service.round.ripen import came_to_age, repoint
 from service.sources.document import Document, KeptOut, Row, Validators
 from storage.engine import Store
-from storage.readings import key_readings
+from storage.readings import key_readings, newest_readings
 from storage.ripe import ripe_readings
 from storage.rounds import begin_round, get_round
 from storage.validators import find_validators
@@ -37,6 +37,10 @@ class Shelf:
 
     def episode(self, now: datetime.datetime, count: int | None, at: datetime.datetime = OUT) -> KeptDocument:
         return self.keep(now, Row("quay", at, count, release="e1"))
+
+    def counts(self) -> dict[str, int | None]:
+        with self.store.reading() as conn:
+            return {one.key: one.count for one in newest_readings(conn, "plays/quay")}
 
     def ripe(self) -> dict[str, int | None]:
         with self.store.reading() as conn:
@@ -87,6 +91,31 @@ def test_every_row_is_accounted_for(calendar: Shelf) -> None:
     assert (done.rows_used, done.stored, done.unchanged, done.absent) == (3, 2, 1, 1)
     assert ([one.row for one in done.kept_out], done.kept_out_count) == ([23, 24, 99], 3)
     assert "its key comes again" in done.kept_out[0].why
+
+
+def test_a_row_that_was_kept_out_is_an_unknown_count_where_no_row_would_mean_zero(
+    store: Store, source, weeks
+) -> None:
+    shelf = Shelf(store, source(weeks("zero")))
+    now = datetime.datetime(2026, 3, 30, 1, tzinfo=UTC)
+    bad = [
+        KeptOut(40 + day, "count must be a number", "1,000", _week("quay", day, None)) for day in (2, 9, 30)
+    ]
+    shelf.keep(now, _week("quay", 2, 5), _week("quay", 16, 1), _week("quay", 17, 2), _week("quay", 23, 6))
+    assert shelf.counts() == {"2026-03-02": 5, "2026-03-16": None, "2026-03-23": 6}
+    # What is known already stays, a split that is left out or new brings no stream, and a count that comes
+    # after all is taken.
+    others = KeptOut(9, "no", "", _week("no", 2, None)), KeptOut(10, "no", "", _week("new", 2, None))
+    done = shelf.keep(now + DAY, _week("quay", 16, 3), kept_out=(*bad, *others))
+    assert shelf.counts() == {
+        "2026-03-02": 5,
+        "2026-03-09": None,
+        "2026-03-16": 3,
+        "2026-03-23": 6,
+        "2026-03-30": None,
+    }
+    assert (done.new_streams, done.counts.rows_used, len(done.counts.kept_out)) == ((), 1, 5)
+    assert shelf.keep(now + DAY, kept_out=tuple(bad)).counts.stored == 0
 
 
 def test_an_empty_document_says_that_everything_is_absent(calendar: Shelf) -> None:

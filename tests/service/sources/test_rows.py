@@ -371,3 +371,13 @@ def test_sifting_against_a_plain_definition(pairs):
     assert {(row.split, row.count) for row in sifted.rows} == {p for p in pairs if len(values[p[0]]) == 1}
     assert len(sifted.rows) == sum(len(counts) == 1 for counts in values.values())
     assert [out.row for out in sifted.kept_out] == [row.number for row in rows if len(values[row.split]) > 1]
+
+
+def test_a_row_that_is_kept_out_still_says_whose_count_is_unknown():
+    row = understand({"at": "2026-03-02", "count": "1,000", "split": "quay"}, 7, RULES)
+    assert isinstance(row, KeptOut)
+    assert row.place == Row("quay", DAY, None)
+    for lost in ({"at": "2.3.26", "count": 5, "split": "quay"}, {"at": DAY, "count": 5, "split": None}):
+        kept_out = understand(lost, 7, RULES)
+        assert isinstance(kept_out, KeptOut)
+        assert kept_out.place is None
