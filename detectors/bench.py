@@ -164,8 +164,8 @@ class Bench:
     def _without_one_offs(self, log_ordinary: FloatArray) -> Likelihood:
         """In logs up to the division: without the broad component a count may be next to impossible.
 
-        Not less than `UNEXPLAINED` of the best node's probability, so that after two counts that no run of the
-        model explains something is left to go on with.
+        Not less than `UNEXPLAINED` of the best node's probability, so that after two counts that no run of
+        the model explains something is left to go on with.
         """
         largest = np.maximum.reduceat(log_ordinary, self.first_row)
         probability = np.maximum(np.exp(log_ordinary - self.over_rows(largest)), UNEXPLAINED)

@@ -15,8 +15,8 @@ LOG_LEVEL_RANGE = 46.0
 STILL_PER_SD = 1.8
 WANDERING_PER_SD = 0.8
 PER_WANDER = 0.25
-"""Where one step of the walk is far wider than a count is uncertain, finer grids than this add nothing: the level
-follows each count, and what the next one is expected to be hangs on the step (see `resolvable_dispersion`)."""
+"""Where one step of the walk is far wider than a count is uncertain, finer grids than this add nothing: the
+level follows each count, and what is expected next hangs on the step (see `resolvable_dispersion`)."""
 MOST_NODES = 512
 FEWEST_NODES = 8
 WIDEST_REACH = 8.0

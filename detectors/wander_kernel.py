@@ -31,7 +31,8 @@ def kernel(step: float, farthest: int = 10_000) -> tuple[float, ...]:
     tuple of float
         Weight at the centre and at 1, 2, ... nodes either side; centre plus twice the rest is 1, and the
         variance is step**2. Up to one spacing five points match variance and fourth moment, which takes
-        slightly negative outer weights below a step of 0.577; above it the Gaussian is sampled and normalised.
+        slightly negative outer weights below a step of 0.577; above it the Gaussian is sampled and
+        normalised.
 
     Notes
     -----

@@ -14,12 +14,12 @@ from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass
 
 import numpy as np
+from alarms import Recorded, alarms, record, threshold_for
 
 from detectors.counts import log_negative_binomial
 from detectors.judge import Rule
 from detectors.model import Model
 from detectors.simulation import NO_ONE_OFFS, OneOffs, simulate, stepped, wearing
-from alarms import Recorded, alarms, record, threshold_for
 
 LEVEL, DISPERSION, FALL = 1000.0, 6.0, 0.6
 ONE_OFFS = OneOffs(share=0.03, least=5.0, most=50.0)

@@ -1,12 +1,12 @@
 """Small versions of what `deploy/prove` measures at length, and the bookkeeping behind it."""
 
-import numpy as np
-import pytest
-
 import accuracy
 import alarms
 import detection
+import numpy as np
+import pytest
 import speed
+
 from detectors.advance import advance, start
 from detectors.judge import Rule
 from detectors.model import Model
