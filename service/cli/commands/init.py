@@ -14,7 +14,6 @@ from service.cli.options import Given, settings_option
 def command(given: Given, file: Path | None) -> None:
     """Write a commented starter file to FILE, or where --settings points. Never overwrites."""
     from config.starter import starter_text
-
     from service.cli.show import say
     from service.cli.writing import write_new
 
