@@ -46,6 +46,8 @@ def kernel(step: float, farthest: int = 10_000) -> tuple[float, ...]:
     >>> round(centre + 2 * (near + far), 12), round(2 * (near + 4 * far), 12)
     (1.0, 0.64)
     """
+    # A numpy number equals the plain one and would fill the cache with its own kind.
+    step = float(step)
     u2 = step * step
     if step == 0.0:
         return (1.0,)

@@ -5,7 +5,7 @@ import math
 import numpy as np
 import pytest
 
-from detectors.spacing import count_variance, on_ladder, widest_spacing
+from detectors.spacing import count_variance, on_ladder, resolvable_dispersion, widest_spacing
 
 
 def trapezoid_error(sd: float, spacing: float) -> float:
@@ -28,8 +28,19 @@ def test_a_still_level_is_resolved(level: float, dispersion: float, run: int) ->
     assert trapezoid_error(sd, spacing) <= 0.005
 
 
-@pytest.mark.parametrize("wander", [0.005, 0.05, 0.3])
-@pytest.mark.parametrize("variance", [1e-3, 0.1, 1.0])
+@pytest.mark.parametrize(
+    ("wander", "variance"),
+    [
+        (0.005, 1e-3),
+        (0.005, 0.1),
+        (0.005, 1.0),
+        (0.05, 1e-3),
+        (0.05, 0.1),
+        (0.05, 1.0),
+        (0.3, 0.1),
+        (0.3, 1.0),
+    ],
+)
 def test_a_wandering_level_is_resolved_at_its_steady_state(wander: float, variance: float) -> None:
     # The steady state of the scalar filter by iterating it: P <- (P + w^2) v / (P + w^2 + v).
     steady = variance
@@ -37,6 +48,25 @@ def test_a_wandering_level_is_resolved_at_its_steady_state(wander: float, varian
         steady = (steady + wander**2) * variance / (steady + wander**2 + variance)
     spacing = float(widest_spacing(np.array([variance]), np.array([wander]), 500)[0])
     assert trapezoid_error(math.sqrt(steady), spacing) <= 1e-6
+
+
+@pytest.mark.parametrize("variance", [1e-3, 1e-6, 1e-12])
+def test_where_a_step_is_far_wider_than_a_count_is_uncertain_the_claim_is_lowered(variance: float) -> None:
+    """The grid is no finer than a quarter of the step, and then the count is taken as that much less exact."""
+    wander, level = 0.3, 60.0
+    spacing = widest_spacing(np.array([variance]), np.array([wander]), 500)
+    assert spacing[0] == pytest.approx(wander / 4.0)
+    dispersion = resolvable_dispersion(spacing, np.array([level]), np.array([1.0 / variance]))
+    blurred = float(count_variance(level, dispersion)[0])
+    assert trapezoid_error(math.sqrt(blurred), float(spacing[0])) <= 0.005
+    # What the next count is expected to be changes by little: the step has the far larger variance.
+    assert blurred <= 0.03 * wander**2
+
+
+def test_a_grid_that_is_fine_enough_claims_what_it_is_given() -> None:
+    variance = count_variance(math.log(50.0), np.array([8.0]))
+    spacing = on_ladder(widest_spacing(variance, np.array([0.01]), 100))
+    assert resolvable_dispersion(spacing, np.array([math.log(80.0)]), np.array([8.0])).tolist() == [8.0]
 
 
 def test_variance_of_the_log_of_a_count_by_simulation() -> None:
