@@ -50,7 +50,7 @@ class Walk:
         result = copy.copy(self.matrix)
         # The factors of a pair that has no weight left may be beyond single precision.
         bounded = np.minimum(factor, LARGEST_FACTOR).astype(dtype, copy=False)
-        result.data = data * np.repeat(bounded, self.per_row)
+        result.data = data * bounded.repeat(self.per_row)
         return result
 
 
@@ -137,11 +137,11 @@ class Bench:
 
     def over_rows(self, values: FloatArray) -> FloatArray:
         """One value a stream, for each of its rows; of a single stream, the value."""
-        return values[0] if values.size == 1 else np.repeat(values, self.rows_of_stream)
+        return values[0] if values.size == 1 else values.repeat(self.rows_of_stream)
 
     def over_pairs(self, values: FloatArray) -> FloatArray:
         """One value a stream, for each of its pairs."""
-        return np.repeat(values, self.pairs_of_stream)
+        return values.repeat(self.pairs_of_stream)
 
     def likelihood(self, counts: Sequence[Observation]) -> Likelihood:
         """Probability of each stream's count at each of its nodes (missing counts have none)."""

@@ -21,9 +21,9 @@ from detectors.spacing import (
 
 FloatArray = NDArray[np.float64]
 
-REACH_OF_COUNT = 2.8
-REACH_OF_LEVEL = 4.2
-NEEDED_REACH = 2.4
+REACH_OF_COUNT = 3.2
+REACH_OF_LEVEL = 4.8
+NEEDED_REACH = 2.8
 REFERENCE_SHARE = 0.75
 TOLERATED_RISE = 0.35
 

@@ -71,7 +71,8 @@ class LevelGrid:
 
     def spread(self, values: FloatArray) -> FloatArray:
         """One value a pair, repeated for each of its rows."""
-        return np.repeat(values, self.size)
+        # The method, not the function: this is called a dozen times a count, and the wrapper costs as much.
+        return values.repeat(self.size)
 
     def of_pairs(self, kept: IntArray) -> "LevelGrid":
         """The grids of some of the pairs."""

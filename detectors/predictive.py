@@ -75,7 +75,7 @@ def _along_grid(
     running = np.cumsum(rise)
     lowest = _up_to(count, mean[grid.start], dispersion[grid.start])
     result = running + grid.spread(lowest - running[grid.start])
-    return np.asarray(np.clip(result, probability, 1.0))
+    return np.minimum(np.maximum(result, probability), 1.0)
 
 
 def _up_to(count: int, mean: FloatArray, dispersion: FloatArray) -> FloatArray:

@@ -10,6 +10,7 @@ FloatArray = NDArray[np.float64]
 
 SHARES = np.array([0.05, 0.5, 0.95])
 NEGLIGIBLE = 1e-6
+NOTHING = np.zeros(1)
 
 
 def level_quantiles(grid: LevelGrid, row_mass: FloatArray) -> Quantiles:
@@ -37,11 +38,11 @@ def level_quantiles(grid: LevelGrid, row_mass: FloatArray) -> Quantiles:
     mass, centre, width = row_mass[heavy], centre[heavy], width[heavy]
     edges = np.concatenate((centre - width / 2.0, centre + width / 2.0))
     density = mass / width
-    order = np.argsort(edges, kind="stable")
+    order = edges.argsort(kind="stable")
     edges = edges[order]
     # The distribution function is straight between edges: its slope rises at lower, falls at upper edges.
-    slope = np.cumsum(np.concatenate((density, -density))[order])
-    reached = np.concatenate(([0.0], np.cumsum(slope[:-1] * np.diff(edges))))
+    slope = np.concatenate((density, -density))[order].cumsum()
+    reached = np.concatenate((NOTHING, (slope[:-1] * (edges[1:] - edges[:-1])).cumsum()))
     return Quantiles(*np.exp(np.interp(SHARES * reached[-1], reached, edges)).tolist())
 
 
@@ -52,7 +53,7 @@ def _cells(grid: LevelGrid, row_mass: FloatArray) -> tuple[FloatArray, FloatArra
     distance = grid.log_level - grid.spread(mean)
     variance = np.add.reduceat(row_mass * distance**2, grid.start) / total
     cell = grid.spacing**2 / 12.0
-    drawn = np.sqrt(np.clip(1.0 - cell / np.maximum(variance, cell), 0.0, 1.0))
+    drawn = np.sqrt(1.0 - cell / np.maximum(variance, cell))
     return grid.spread(mean) + distance * grid.spread(drawn), grid.spread(grid.spacing)
 
 

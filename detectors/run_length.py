@@ -165,8 +165,6 @@ def _update(state: FilterState, counts: tuple[Observation, ...]) -> tuple[Filter
     walk = bench.walk(gap)
     shifting = weights @ (state.run_factor * hazard).astype(weights.dtype)
     moved = walk.scaled(row_factor, weights.dtype) @ weights
-    # Far out in a tail the walk's negative outer weights can win, by less than a millionth of the peak.
-    np.maximum(moved, 0.0, out=moved)
     slots, slot = _free_slot(state.slots)
     factor = state.run_factor * (1.0 - hazard)
     if slots.used.size > moved.shape[1]:
@@ -221,11 +219,18 @@ def _weighed(state: FilterState, likelihood: Likelihood) -> tuple[FilterState, S
         log_predictive=log_sum + likelihood.log_scale,
         likelihood=likelihood,
         grid=grid,
-        row_mass=in_pair * grid.spread(share),
-        run_mass=np.add.reduceat(share[:, None] * by_slot, bench.first_pair, axis=0),
+        row_mass=np.maximum(in_pair * grid.spread(share), 0.0),
+        # Far out in a tail the walk's negative outer weights can win, by less than a millionth of the peak.
+        run_mass=np.maximum(_by_stream(share, by_slot, bench), 0.0),
         slots=state.slots,
     )
     return _merged(replace(state, log_weight=log_weight, pair_total=total), step.run_mass.mean(axis=0)), step
+
+
+def _by_stream(share: FloatArray, by_slot: FloatArray, bench: Bench) -> FloatArray:
+    if bench.streams == 1:
+        return (share @ by_slot)[None, :]
+    return np.asarray(np.add.reduceat(share[:, None] * by_slot, bench.first_pair, axis=0))
 
 
 def _merged(state: FilterState, run_mass: FloatArray) -> FilterState:

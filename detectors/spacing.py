@@ -13,7 +13,7 @@ LOG_LEVEL_RANGE = 46.0
 """Length of the range over which the first level is flat on the log scale."""
 
 STILL_PER_SD = 1.8
-WANDERING_PER_SD = 0.8
+WANDERING_PER_SD = 0.72
 PER_WANDER = 0.25
 """Where one step of the walk is far wider than a count is uncertain, finer grids than this add nothing: the
 level follows each count, and what is expected next hangs on the step (see `resolvable_dispersion`)."""

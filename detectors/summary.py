@@ -62,7 +62,7 @@ def posterior(state: FilterState, step: Step, observation: Observation, recent_s
         level=step.level,
         dispersion=_marginal(bench.dispersions, weight),
         wander=_marginal(bench.wanders, weight),
-        one_off=float(np.clip(step.row_mass @ step.likelihood.one_off_share, 0.0, 1.0)),
+        one_off=min(max(float(step.row_mass @ step.likelihood.one_off_share), 0.0), 1.0),
         log_predictive=float(step.log_predictive[0]),
         pit=transform(bench, step, observation),
     )
