@@ -2,7 +2,8 @@
 
 from collections.abc import Callable
 
-from service.http_client import Fetch, FetchError, fetch
+from service.calls import Fetch, FetchError
+from service.http_client import fetch
 from service.logs import log
 
 DEADLINE_SECONDS = 10.0

@@ -4,7 +4,8 @@ from collections.abc import Callable
 from dataclasses import dataclass, field
 from datetime import datetime
 
-from service.http_client import FetchError, Post, post
+from service.calls import FetchError, Post
+from service.http_client import post
 from service.outlets.answers import outcome_of
 from service.outlets.outlet import Kind, Outcome
 from service.outlets.signing import Signer

@@ -8,7 +8,8 @@ import os
 import stat
 from collections.abc import Iterator
 
-from service.http_client import FetchError, Monotonic, fetch
+from service.calls import FetchError, Monotonic
+from service.http_client import fetch
 from service.sources.document import Document, KeptOut, Row, Validators
 from service.sources.errors import SourceUnreadable
 from service.sources.plans import CsvPlan, FilePlace, WebPlace, fingerprint

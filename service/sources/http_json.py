@@ -5,7 +5,8 @@ from collections.abc import Iterator
 from dataclasses import replace
 from decimal import Decimal
 
-from service.http_client import Answer, Deadline, Fetch, FetchError, Monotonic, Session, join, same_origin
+from service.calls import Answer, Deadline, Fetch, FetchError, Monotonic
+from service.http_client import Session, join, same_origin
 from service.sources.document import Document, KeptOut, Row, Validators
 from service.sources.errors import SourceUnreadable, UnusablePath
 from service.sources.json_path import compile_path, nodes

@@ -2,7 +2,7 @@
 
 from dataclasses import dataclass
 
-from service.http_client import Monotonic
+from service.calls import Monotonic
 from service.sources.csv_table import read_csv
 from service.sources.document import Document, Validators
 from service.sources.http_json import read_json

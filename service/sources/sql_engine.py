@@ -14,7 +14,7 @@ from sqlalchemy.engine import URL, make_url
 from sqlalchemy.exc import ArgumentError, NoSuchModuleError, SQLAlchemyError
 from sqlalchemy.pool import NullPool
 
-from service.http_client import Deadline
+from service.calls import Deadline
 from service.sources.errors import MissingDriver, SourceUnreadable
 from service.sources.plans import SqlPlan
 

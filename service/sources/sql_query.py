@@ -5,7 +5,7 @@ from collections.abc import Iterator, Sequence
 from sqlalchemy import Connection, CursorResult, Engine
 from sqlalchemy.exc import DBAPIError, SQLAlchemyError
 
-from service.http_client import Deadline, Monotonic
+from service.calls import Deadline, Monotonic
 from service.sources.document import Document, KeptOut, Row
 from service.sources.errors import SourceUnreadable
 from service.sources.plans import SqlPlan

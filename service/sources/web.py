@@ -5,7 +5,8 @@ import re
 from http import HTTPStatus
 from urllib.parse import unquote, urlsplit, urlunsplit
 
-from service.http_client import Answer, Fetch, host_of
+from service.calls import Answer, Fetch
+from service.http_client import host_of
 from service.sources.document import Validators
 from service.sources.errors import SourceUnreadable
 from service.sources.plans import Headers, WebPlace

@@ -10,22 +10,8 @@ from collections.abc import Callable, Iterator
 
 import pytest
 
-from service.http_client import (
-    MOST_REDIRECTS,
-    BodyTooLarge,
-    Deadline,
-    Fetch,
-    FetchError,
-    FetchFailed,
-    FetchTimedOut,
-    Post,
-    Session,
-    fetch,
-    host_of,
-    join,
-    post,
-    same_origin,
-)
+from service.calls import BodyTooLarge, Deadline, Fetch, FetchError, FetchFailed, FetchTimedOut, Post
+from service.http_client import MOST_REDIRECTS, Session, fetch, host_of, join, post, same_origin
 
 Talk = Callable[[socket.socket, int], None]
 SECRET = "s3cret-token-9871"
