@@ -165,7 +165,11 @@ def test_a_finer_grid_says_the_same(seed):
     np.testing.assert_allclose(said.shift_probability, again.shift_probability, atol=1e-3)
     np.testing.assert_allclose(said.one_off, again.one_off, atol=1e-3)
     for one, other in zip(said.level, again.level, strict=True):
-        assert (one.low, one.mid, one.high) == pytest.approx((other.low, other.mid, other.high), rel=5e-3)
+        # A quantile is read off between nodes, so its error goes with the width of the band: a twentieth here.
+        width = other.high - other.low
+        assert (one.low, one.mid, one.high) == pytest.approx(
+            (other.low, other.mid, other.high), abs=width / 20
+        )
 
 
 def test_parts_agree():
