@@ -65,8 +65,8 @@ def first_grid(
     far = model.accuracy.reach
     lowest, highest = _span(np.full(dispersion.size, np.median(levels)), dispersion, REACH_OF_LEVEL * far)
     for level, one in zip(levels, counts, strict=True):
-        same = np.full(dispersion.size, level)
-        low, high = count_span(same, same * 0.0 + (one.count == 0), dispersion, REACH_OF_COUNT * far)
+        same, is_zero = np.full(dispersion.size, level), np.full(dispersion.size, float(one.count == 0))
+        low, high = count_span(same, is_zero, dispersion, REACH_OF_COUNT * far)
         lowest, highest = np.minimum(lowest, low), np.maximum(highest, high)
     spacing = pair_spacing(
         model, dispersion, wander, np.asarray(reference_level(counts)), max(len(counts), model.accuracy.early)
